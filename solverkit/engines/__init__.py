@@ -1,0 +1,1 @@
+"""Arithmetic methods: one file each, with its compiled kernels beside it. A module offers itself as ``ENGINE``."""

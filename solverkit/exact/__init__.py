@@ -1,0 +1,1 @@
+"""Integers, fractions and rigorous enclosures only: nothing here is decided by a floating-point number."""
