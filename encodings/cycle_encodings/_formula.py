@@ -1,0 +1,81 @@
+"""What an encoding gives: a formula with named condition groups, and the way back from a model to a least element."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from hashlib import sha256
+from typing import TYPE_CHECKING, Protocol
+
+from pysat.formula import CNF
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable, Mapping
+
+    from solverkit.window import Cell
+
+__all__ = ["Encoder", "Encoding"]
+
+
+@dataclass(frozen=True, slots=True)
+class Encoding:
+    """A formula whose models are the cycles of one cell, each once.
+
+    Args:
+        cell: of positive elements.
+        variables: number of variables, 1 … ``variables``.
+        clauses: the clauses, in order.
+        groups: name of a condition -> ranges [start, stop) of the clauses that state it; together they are all.
+        least_bits: variables of the least element, least significant first.
+        names: variable -> what it means, for those that mean something by themselves.
+    """
+
+    cell: Cell
+    variables: int
+    clauses: tuple[tuple[int, ...], ...]
+    groups: Mapping[str, tuple[tuple[int, int], ...]]
+    least_bits: tuple[int, ...]
+    names: Mapping[int, str]
+
+    def cnf(self) -> CNF:
+        """Return the formula as python-sat keeps it."""
+        formula = CNF()
+        formula.extend([list(clause) for clause in self.clauses])
+        formula.nv = max(formula.nv, self.variables)
+        return formula
+
+    def digest(self) -> str:
+        """Return the SHA-256 of the clauses in DIMACS form, without comments."""
+        lines = [f"p cnf {self.variables} {len(self.clauses)}"]
+        lines += [" ".join(map(str, (*clause, 0))) for clause in self.clauses]
+        return sha256(("\n".join(lines) + "\n").encode("ascii")).hexdigest()
+
+    def decode(self, model: Iterable[int]) -> int:
+        """Return the least element that a model stands for; the caller substitutes it into the map.
+
+        Args:
+            model: the literals that hold.
+        """
+        true = set(model)
+        return sum(1 << place for place, bit in enumerate(self.least_bits) if bit in true)
+
+    def blocking(self, least: int) -> tuple[int, ...]:
+        """Return the clause that excludes the cycle with this least element."""
+        return tuple(-bit if least >> place & 1 else bit for place, bit in enumerate(self.least_bits))
+
+
+class Encoder(Protocol):
+    """An encoding strategy; one file offers one as ``ENCODING``."""
+
+    @property
+    def name(self) -> str:
+        """The name that options and records use."""
+
+    @property
+    def summary(self) -> str:
+        """One line: what it is good for."""
+
+    def encode(self, cell: Cell) -> Encoding:
+        """Return the formula for a cell of positive elements; the same cell gives the same formula."""
+
+    def size(self, cell: Cell) -> int:
+        """Return a rough number of clauses, without building them."""
