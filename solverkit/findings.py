@@ -150,6 +150,8 @@ class CellFinding:
         methods: names of the methods whose complete lists agree, in the order they ran.
         seconds: computing time spent on the cell.
         reason: for ``open``, why; else what excluded the cell, or empty.
+        total: exact number of cycles when they were counted and ``cycles`` is only a sample, else None.
+        contradiction: whether complete lists of two methods differ; the cell is then open and ``cycles`` holds all.
 
     Raises:
         ContradictionError: the parts do not fit each other.
@@ -162,6 +164,8 @@ class CellFinding:
     methods: tuple[str, ...] = ()
     seconds: float = 0.0
     reason: str = ""
+    total: int | None = None
+    contradiction: bool = False
 
     def __post_init__(self) -> None:
         if self.verdict is Verdict.FOUND and not self.cycles:
@@ -170,6 +174,8 @@ class CellFinding:
             raise ContradictionError(f"{self.cell}: none, but {len(self.cycles)} cycles are named")
         if (self.evidence is None) != (self.verdict is Verdict.OPEN):
             raise ContradictionError(f"{self.cell}: verdict {self.verdict} with evidence {self.evidence}")
+        if self.contradiction and self.verdict is not Verdict.OPEN:
+            raise ContradictionError(f"{self.cell}: contradictory lists, yet the verdict is {self.verdict}")
         if self.verdict is not Verdict.OPEN and not self.methods:
             raise ContradictionError(f"{self.cell}: verdict {self.verdict} without a method")
         if self.evidence is Evidence.CONFIRMED and len(self.methods) < 2:

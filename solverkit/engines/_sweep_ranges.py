@@ -73,14 +73,13 @@ class Profile:
         return ends
 
 
-@lru_cache(maxsize=64)
-def _profile(cells: tuple[Cell, ...]) -> Profile:
-    return profile(cells)
-
-
 def profile(cells: Sequence[Cell]) -> Profile:
     """Return the profile of cells of one map; cells that have no candidate are left out."""
-    live = sorted((bound, cell.length, cell.odd, cell.above) for cell in cells if (bound := cell_bound(cell)) > cell.above)
+    live = sorted(
+        (bound, cell.length, cell.odd, cell.above)
+        for cell in cells
+        if (bound := cell_bound(cell)) > cell.above
+    )
     if not live:
         return Profile(0, 0, (), (), ())
     bounds: list[int] = []

@@ -115,7 +115,9 @@ def _fits(cell: Cell, high: int) -> bool:
     return cell.multiplier < 1 << 31 and abs(cell.offset) < 1 << 61 and high < 1 << 62
 
 
-def _scan(cell: Cell, first: int, last: int, length: int, odd: int, found: set[tuple[int, int, int]]) -> tuple[int, int]:
+def _scan(
+    cell: Cell, first: int, last: int, length: int, odd: int, found: set[tuple[int, int, int]]
+) -> tuple[int, int]:
     """Iterate candidates from ``first`` for a short time; return the last integer done and the orbits handed over."""
     q, d = cell.multiplier, cell.offset
     n = first | 1

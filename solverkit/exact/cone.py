@@ -24,7 +24,7 @@ if TYPE_CHECKING:
 
     from solverkit.maps import Map
 
-__all__ = ["ThinCone", "floor_sum"]
+__all__ = ["ThinCone", "floor_sum", "tallest"]
 
 _START_BITS = 128
 _MOST_BITS = 1 << 22
@@ -209,3 +209,24 @@ def sum_capped_identity(xs: Span, top: int) -> int:
     turn = max(xs.low, min(xs.high + 1, top + 1))
     count = turn - xs.low
     return (xs.low - 1 + turn - 2) * count // 2 + top * (xs.high - turn + 1)
+
+
+def tallest(positive_map: Map, lengths: Span, odd: Span) -> tuple[int, int, int] | None:
+    """Return (U, k, x) of the cell with the largest product bound in the ranges, the first one if several; or None.
+
+    Doubling and bisection on the bound, with one count each; so windows of any size take milliseconds.
+    """
+
+    def reaches(bound: int) -> bool:
+        return ThinCone(positive_map, bound - 1, lengths, odd).count() > 0
+
+    if not reaches(1):
+        return None
+    low, high = 1, 2
+    while reaches(high):
+        low, high = high, high * high
+    while high - low > 1:
+        middle = (low + high) // 2
+        low, high = (middle, high) if reaches(middle) else (low, middle)
+    length, odd_steps = next(ThinCone(positive_map, low - 1, lengths, odd).cells())
+    return low, length, odd_steps

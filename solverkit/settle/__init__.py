@@ -1,1 +1,1 @@
-"""TODO."""
+"""From a window to findings: triage, choice of methods, execution, verdicts."""

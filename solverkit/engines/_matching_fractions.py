@@ -1,0 +1,64 @@
+"""The contributions to β as fractions of the modulus, in 64-bit fixed point with natural wrap-around."""
+
+from __future__ import annotations
+
+import hashlib
+from math import gcd
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+if TYPE_CHECKING:
+    import numpy.typing as npt
+
+    from solverkit.window import Cell
+
+__all__ = ["fractions", "modulus", "slack"]
+
+_FULL = (1 << 64) - 1
+
+
+def modulus(cell: Cell) -> int:
+    """Return D' = |D|/gcd(D, d): a word gives integers n = d·β/D exactly when D' divides β."""
+    size = abs(cell.determinant)
+    return size // gcd(size, cell.offset)
+
+
+def slack(odd: int) -> int:
+    """Return ⌊x/2⌋, how far from 0 modulo 2^64 the rounded fractions of a word with D' | β can sum.
+
+    Each rounded fraction differs from w·2^64/D' by at most 1/2, and the exact ones sum to (u·β/D')·2^64, a multiple of
+    2^64 when D' divides β. The rounded sum is an integer within x/2 of that multiple. Hence no word is missed; the
+    words met by chance are left to exact substitution.
+
+    >>> slack(45)
+    22
+    """
+    return odd // 2
+
+
+def fractions(cell: Cell) -> npt.NDArray[np.uint64]:
+    """Return the table y[i, j] = round(u·q^(x−1−i)·2^j mod D' · 2^64/D'), of shape (x, k).
+
+    The contribution to β of an i-th odd step (from 0) at step j is q^(x−1−i)·2^j (Böhm & Sontacchi 1978). The unit
+    u modulo D' spreads the sums evenly over the circle; it is a fixed function of the cell. One code serves every D',
+    of 5 bits or of 500.
+    """
+    size = modulus(cell)
+    table = np.zeros((cell.odd, cell.length), np.uint64)
+    unit = _unit(size, f"{cell.multiplier} {cell.offset} {cell.length} {cell.odd}")
+    for i in range(cell.odd):
+        weight = pow(cell.multiplier, cell.odd - 1 - i, size) * unit % size
+        for j in range(cell.length):
+            table[i, j] = (((weight << 65) // size + 1) >> 1) & _FULL
+            weight = 2 * weight % size
+    return table
+
+
+def _unit(size: int, seed: str) -> int:
+    """Return a unit modulo ``size`` that looks random and depends on nothing but the arguments."""
+    digest = hashlib.shake_256(seed.encode()).digest(size.bit_length() // 8 + 16)
+    unit = int.from_bytes(digest, "big") % size
+    while gcd(unit, size) != 1:
+        unit = (unit + 1) % size
+    return unit

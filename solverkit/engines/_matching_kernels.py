@@ -1,0 +1,257 @@
+"""Compiled loops of the bucket join. Every constant of unsigned code is unsigned: numba makes int64 with uint64 a float.
+
+The circle of residues modulo 2^64 is cut into buckets of ``width`` residues. In a bucket both halves are written out as
+distances v from its lower end, less than ``width``; distances from −slack to −1 are those carried from the bucket
+before. Arrays ``base``, ``first``, ``end``, ``values`` are those of a `Half`; ``at`` holds the place of every stream.
+"""
+
+# mypy: disable-error-code="no-untyped-def,misc,no-any-return,untyped-decorator"
+# ruff: noqa: ANN001, ANN201, ANN202 - numba infers the types
+
+from __future__ import annotations
+
+import numpy as np
+from llvmlite import ir
+from numba import njit, types
+from numba.extending import intrinsic
+
+from solverkit.engines._matching_halves import PAD
+
+__all__ = [
+    "BUCKETS",
+    "DONE",
+    "EMITTED_LEFT",
+    "EMITTED_RIGHT",
+    "FULL",
+    "CROWDED",
+    "POOLED_LEFT",
+    "POOLED_RIGHT",
+    "STATE",
+    "join",
+    "restart",
+]
+
+#: What `join` answers: all buckets done, a buffer is too small, the pool of survivors is full.
+DONE, FULL, CROWDED = 0, 1, 2
+#: Places in the state of `join`: buckets done, sums written out, length of the pools, then of the carried lists.
+BUCKETS, EMITTED_LEFT, EMITTED_RIGHT, POOLED_LEFT, POOLED_RIGHT, _CARRIED_LEFT, _CARRIED_RIGHT = range(7)
+#: Length of that state.
+STATE = 7
+
+_ZERO, _ONE, _SIX, _LINE = np.uint64(0), np.uint64(1), np.uint64(6), np.uint64(8)
+_IN_WORD = np.uint64(63)
+_PAD, _LAST = np.uint64(PAD), np.uint64(PAD - 1)
+_AHEAD = 8  # streams; with 4 or 16 the loop is 3 and 10 % slower (k = 72)
+_LINES = 8  # cache lines of 8 values fetched ahead: a stream gives some 30 values a bucket
+# Odd multipliers: the fractional parts of the golden ratio and of √3, times 2^64.
+_HASH, _REHASH = np.uint64(0x9E3779B97F4A7C15), np.uint64(0xBB67AE8584CAA73B)
+
+
+@intrinsic
+def _fetch(typingctx, array, place):  # noqa: ARG001 - numba's protocol
+    """Ask for the cache line of ``array[place]``; a place past the end is harmless."""
+
+    def generate(context, builder, signature, arguments):
+        data = context.make_array(signature.args[0])(context, builder, arguments[0]).data
+        pointer = builder.bitcast(builder.gep(data, [arguments[1]]), ir.IntType(8).as_pointer())
+        number = ir.IntType(32)
+        kind = ir.FunctionType(ir.VoidType(), [pointer.type, number, number, number])
+        prefetch = builder.module.declare_intrinsic("llvm.prefetch", [pointer.type], kind)
+        builder.call(prefetch, [pointer, number(0), number(3), number(1)])
+        return context.get_dummy_value()
+
+    return types.void(array, place), generate
+
+
+@njit(cache=True, nogil=True)
+def _seek(base, first, end, values, at, origin):
+    """Set every stream to its first sum at or after ``origin``, going round the circle."""
+    for i in range(base.size):
+        low, high, wanted = first[i], end[i], origin - base[i]
+        while low < high:
+            middle = (low + high) >> 1
+            if values[middle] < wanted:
+                low = middle + 1
+            else:
+                high = middle
+        at[i] = low if low < end[i] else first[i]
+
+
+@njit(cache=True, nogil=True)
+def _emit(base, first, end, values, at, origin, width, slack, buffer, filled, carry, carried):
+    """Append the distances of all sums in the bucket to ``buffer``, and what the next bucket needs to ``carry``.
+
+    Returns the new lengths of both, or (−1, −1) when one of them is too small.
+    """
+    room = buffer.size - PAD
+    edge = width - slack
+    for i in range(base.size):
+        if i + _AHEAD < base.size:
+            ahead = at[i + _AHEAD]
+            for line in range(_LINES):
+                _fetch(values, ahead + 8 * line)
+        shift = base[i] - origin
+        stop = end[i]
+        start = filled
+        if values[stop - 1] + shift >= width:
+            # The list leaves the bucket before its end: no wrap, and the copies behind it lie outside as well.
+            place, out = np.uint64(at[i]), np.uint64(filled)
+            while True:
+                if np.int64(out) > room:
+                    return -1, -1
+                for t in range(PAD):
+                    buffer[out + np.uint64(t)] = values[place + np.uint64(t)] + shift
+                if values[place + _LAST] + shift >= width:
+                    break
+                place += _PAD
+                out += _PAD
+            inside = _ZERO
+            for t in range(PAD):
+                if values[place + np.uint64(t)] + shift < width:
+                    inside += _ONE
+            filled = np.int64(out + inside)
+            at[i] = np.int64(place + inside)
+        else:
+            spot = at[i]
+            for _ in range(stop - first[i]):
+                distance = values[spot] + shift
+                if distance >= width:
+                    break
+                if filled >= buffer.size:
+                    return -1, -1
+                buffer[filled] = distance
+                filled += 1
+                spot += 1
+                if spot == stop:
+                    spot = first[i]
+            at[i] = spot
+        back = filled - 1
+        while back >= start and buffer[back] >= edge:
+            if carried >= carry.size:
+                return -1, -1
+            carry[carried] = buffer[back] - width
+            carried += 1
+            back -= 1
+    return filled, carried
+
+
+@njit(cache=True, nogil=True)
+def _mark(buffer, filled, slack, shift, cells):
+    """Mark the cells of 2^shift residues that some distance, or one within ``slack`` of it, lies in."""
+    cell = _ONE << shift
+    low, twice = cell - _ONE, slack + slack
+    near_border = 0
+    for i in range(filled):
+        near_border += np.int64(((buffer[i] + slack) & low) < twice)
+    for i in range(np.uint64(filled)):
+        spot = (buffer[i] + cell) >> shift
+        cells[spot >> _SIX] |= _ONE << (spot & _IN_WORD)
+    if near_border:
+        for i in range(filled):
+            if ((buffer[i] + slack) & low) < twice:
+                spot = (buffer[i] - slack + cell) >> shift
+                cells[spot >> _SIX] |= _ONE << (spot & _IN_WORD)
+                spot = (buffer[i] + slack + cell) >> shift
+                cells[spot >> _SIX] |= _ONE << (spot & _IN_WORD)
+
+
+@njit(cache=True, nogil=True)
+def _probe(buffer, filled, shift, cells):
+    """Keep, at the front, the distances whose cell is marked; return their number."""
+    cell = _ONE << shift
+    kept = _ZERO
+    for i in range(np.uint64(filled)):
+        distance = buffer[i]
+        spot = (distance + cell) >> shift
+        buffer[kept] = distance
+        kept += (cells[spot >> _SIX] >> (spot & _IN_WORD)) & _ONE
+    return np.int64(kept)
+
+
+@njit(cache=True, nogil=True)
+def _thin(buffer, filled, others, number, slack, shift, multiplier, top, table):
+    """Keep, at the front, what may lie within ``slack`` of one of the first ``number`` of ``others``.
+
+    Cells of 2^shift ≥ 2·slack residues are hashed into the ``table`` of 2^(64 − top) bits. Returns how many are kept.
+    """
+    table[:] = _ZERO
+    for i in range(number):
+        spot = (((others[i] - slack) >> shift) * multiplier) >> top
+        table[spot >> _SIX] |= _ONE << (spot & _IN_WORD)
+        spot = (((others[i] + slack) >> shift) * multiplier) >> top
+        table[spot >> _SIX] |= _ONE << (spot & _IN_WORD)
+    kept = _ZERO
+    for i in range(np.uint64(filled)):
+        distance = buffer[i]
+        spot = ((distance >> shift) * multiplier) >> top
+        buffer[kept] = distance
+        kept += (table[spot >> _SIX] >> (spot & _IN_WORD)) & _ONE
+    return np.int64(kept)
+
+
+@njit(cache=True, nogil=True)
+def restart(base, first, end, values, at, origin, slack, buffer, carry):
+    """Set the streams to ``origin`` and carry what lies less than ``slack`` before it; return how many, −1 if too many."""
+    _seek(base, first, end, values, at, origin - slack)
+    _, carried = _emit(base, first, end, values, at, origin - slack, slack, slack, buffer, 0, carry, 0)
+    return carried
+
+
+@njit(cache=True, nogil=True)
+def join(
+    left_base, left_first, left_end, left_values, left_at, left, left_carry, left_pool,
+    right_base, right_first, right_end, right_values, right_at, right, right_carry, right_pool,
+    origin, width, buckets, slack, shift, fine, cells, table, state,
+):  # fmt: skip
+    """Join ``buckets`` buckets from ``origin`` on; what may have a partner is appended to the pools, as residues.
+
+    Returns DONE, FULL or CROWDED. ``state`` then tells how far it came: a bucket that was not finished has left no trace
+    in it, but has moved the streams.
+    """
+    top = np.uint64(64 - 6)
+    size = table.size
+    while size > 1:
+        size >>= 1
+        top -= _ONE
+    for _ in range(buckets):
+        filled = state[_CARRIED_LEFT]
+        left[:filled] = left_carry[:filled]
+        count, left_carried = _emit(
+            left_base, left_first, left_end, left_values, left_at, origin, width, slack, left, filled, left_carry, 0
+        )  # fmt: skip
+        more = state[_CARRIED_RIGHT]
+        right[:more] = right_carry[:more]
+        number, right_carried = _emit(
+            right_base, right_first, right_end, right_values, right_at, origin, width, slack, right, more, right_carry, 0
+        )  # fmt: skip
+        if count < 0 or number < 0:
+            return FULL
+        emitted_left, emitted_right = count - filled, number - more
+        cells[:] = _ZERO
+        _mark(left, count, slack, shift, cells)
+        number = _probe(right, number, shift, cells)
+        multiplier = _HASH
+        for turn in range(4):
+            if count == 0 or number == 0:
+                break
+            if turn % 2 == 0:
+                count = _thin(left, count, right, number, slack, fine, multiplier, top, table)
+            else:
+                number = _thin(right, number, left, count, slack, fine, multiplier, top, table)
+            multiplier *= _REHASH
+        if count and number:
+            if state[POOLED_LEFT] + count > left_pool.size or state[POOLED_RIGHT] + number > right_pool.size:
+                return CROWDED
+            for i in range(count):
+                left_pool[state[POOLED_LEFT] + i] = left[i] + origin
+            for i in range(number):
+                right_pool[state[POOLED_RIGHT] + i] = right[i] + origin
+            state[POOLED_LEFT] += count
+            state[POOLED_RIGHT] += number
+        state[EMITTED_LEFT] += emitted_left
+        state[EMITTED_RIGHT] += emitted_right
+        state[_CARRIED_LEFT] = left_carried
+        state[_CARRIED_RIGHT] = right_carried
+        state[BUCKETS] += 1
+        origin += width
+    return DONE

@@ -1,0 +1,321 @@
+"""Settling a window: triage, execution with every result recorded at once, and the findings."""
+
+from __future__ import annotations
+
+import time
+from collections import defaultdict
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import TYPE_CHECKING, Protocol
+
+from solverkit.errors import DossierError
+from solverkit.findings import CellFinding, Cycle, Evidence, Verdict
+from solverkit.ledger.ledger import Ledger, batch_key
+from solverkit.methods import Budget, merged
+from solverkit.settle.choice import CONFIRM_SECONDS, Batch, method_named, plan
+from solverkit.settle.pool import Order, executor, run_orders, usable_cores
+from solverkit.settle.triage import Criterion, Triage, triage
+from solverkit.settle.verdicts import conclude, lists_by_cell
+from solverkit.window_file import window_digest, window_table
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable, Iterator, Sequence
+
+
+    from solverkit.methods import Family, Listing, Piece, PieceResult
+    from solverkit.window import Cell, Window
+
+__all__ = ["Progress", "Settings", "Settlement", "default_dossier", "settle"]
+
+_PIECE_SECONDS = 4.0
+_ORDER_SECONDS = 0.5
+_ORDER_PIECES = 64
+_SERIAL_SECONDS = 1.5
+_MOST_ROUNDS = 4
+
+
+@dataclass(frozen=True, slots=True)
+class Settings:
+    """How a window is settled.
+
+    Args:
+        evidence: level asked for; None asks for a second method wherever it fits.
+        methods: names of the methods to use on every cell, or None to choose.
+        jobs: number of processes; None uses the cores there are.
+        cluster: address of a Dask scheduler, or None.
+        budget: seconds that one method may spend on one cell, or None.
+        memory: bytes that one worker may use, or None.
+    """
+
+    evidence: Evidence | None = None
+    methods: tuple[str, ...] | None = None
+    jobs: int | None = None
+    cluster: str | None = None
+    budget: float | None = None
+    memory: int | None = None
+
+
+class Progress(Protocol):
+    """What `settle` tells of its progress; units are estimated seconds of computing."""
+
+    def planned(self, seconds: float, cells: int) -> None:
+        """More work was planned."""
+
+    def advanced(self, seconds: float, note: str) -> None:
+        """Some of it is done."""
+
+
+class _Silent:
+    def planned(self, seconds: float, cells: int) -> None:
+        pass
+
+    def advanced(self, seconds: float, note: str) -> None:
+        pass
+
+
+@dataclass(frozen=True, slots=True)
+class Settlement:
+    """The findings on a window.
+
+    Args:
+        triage: what arithmetic excluded, and the live cells.
+        findings: one for each live cell, in the order of the triage.
+        evidence_asked: the level asked for, or None.
+        seconds: wall-clock time of this run.
+        resumed: number of complete lists that were already on record.
+    """
+
+    triage: Triage
+    findings: tuple[CellFinding, ...]
+    evidence_asked: Evidence | None = None
+    seconds: float = 0.0
+    resumed: int = 0
+
+    @property
+    def window(self) -> Window:
+        """The window."""
+        return self.triage.window
+
+    @property
+    def cycles(self) -> tuple[Cycle, ...]:
+        """All cycles, in the order of published lists."""
+        return tuple(sorted((c for f in self.findings for c in f.cycles), key=Cycle.sort_key))
+
+    @property
+    def open_cells(self) -> tuple[CellFinding, ...]:
+        """The findings that are open."""
+        return tuple(f for f in self.findings if f.verdict is Verdict.OPEN)
+
+    @property
+    def contradictions(self) -> tuple[CellFinding, ...]:
+        """The findings on which two methods differ."""
+        return tuple(f for f in self.findings if f.contradiction)
+
+    @property
+    def short_of_evidence(self) -> tuple[CellFinding, ...]:
+        """The settled findings whose evidence is below the level asked for."""
+        asked = self.evidence_asked
+        return tuple(f for f in self.findings if asked and f.evidence is not None and f.evidence < asked)
+
+    @property
+    def complete(self) -> bool:
+        """Whether every cell of the window is settled."""
+        return not self.open_cells
+
+    @property
+    def exit_status(self) -> int:
+        """What the command line answers."""
+        if self.contradictions:
+            return 5
+        return 3 if self.open_cells or self.short_of_evidence else 0
+
+
+@dataclass(slots=True)
+class _State:
+    """What is known while settling."""
+
+    ledger: Ledger
+    settings: Settings
+    listings: dict[tuple[str, Cell], Listing] = field(default_factory=dict)
+    failed: set[tuple[str, Cell]] = field(default_factory=set)
+    refused: dict[Cell, str] = field(default_factory=dict)
+
+    def take(self, listings: Iterable[Listing]) -> None:
+        for entry in listings:
+            key = (entry.method, entry.cell)
+            if entry.complete or key not in self.listings or not self.listings[key].complete:
+                self.listings[key] = entry
+            if not entry.complete:
+                self.failed.add(key)
+
+    def done(self) -> tuple[dict[Cell, frozenset[Family]], dict[Cell, frozenset[str]]]:
+        families: dict[Cell, set[Family]] = defaultdict(set)
+        names: dict[Cell, set[str]] = defaultdict(set)
+        for (name, cell), entry in self.listings.items():
+            if entry.complete:
+                families[cell].add(method_named(name).family)
+                names[cell].add(name)
+        return ({c: frozenset(v) for c, v in families.items()}, {c: frozenset(v) for c, v in names.items()})
+
+
+def settle(
+    window: Window, dossier: Path, settings: Settings | None = None, progress: Progress | None = None
+) -> Settlement:
+    """Decide every live cell of ``window`` and record everything in ``dossier``.
+
+    Args:
+        window: the window.
+        dossier: folder; made when absent, continued when it holds the same window.
+        settings: how; the defaults when None.
+        progress: told of the progress.
+
+    Returns:
+        The findings; cells that no method could decide within its limits are open, with the reason.
+
+    Raises:
+        DossierError: the folder can't be used, or holds another window.
+    """
+    begun = time.perf_counter()
+    settings = settings or Settings()
+    examined = triage(window, Criterion.BALANCED)
+    cells = _reduced_cells(examined)
+    with _opened(window, dossier) as ledger:
+        state = _State(ledger, settings)
+        state.take(ledger.listings())
+        state.failed.clear()
+        resumed = sum(entry.complete for entry in state.listings.values())
+        _decide(cells, state, progress or _Silent())
+        lists = lists_by_cell(list(state.listings.values()))
+        refused = {(c.multiplier, c.offset, c.length, c.odd): reason for c, reason in state.refused.items()}
+        findings = tuple(conclude(window, live, lists, refused) for live in examined.cells)
+    return Settlement(examined, findings, settings.evidence, time.perf_counter() - begun, resumed)
+
+
+def _opened(window: Window, dossier: Path) -> Ledger:
+    try:
+        dossier.mkdir(parents=True, exist_ok=True)
+    except OSError as problem:
+        raise DossierError(dossier, f"can't be made ({problem.strerror}); name another folder with --dossier") from problem
+    ledger = Ledger(dossier / "ledger.sqlite")
+    try:
+        ledger.bind(window, window_digest(window), window_table(window))
+    except BaseException:
+        ledger.close()
+        raise
+    return ledger
+
+
+def _reduced_cells(examined: Triage) -> tuple[Cell, ...]:
+    """Return the reduced cells without repeats, each with the least bound that any of its originals asks for."""
+    least: dict[tuple[int, int, int, int], Cell] = {}
+    for live in examined.cells:
+        cell = live.reduction.cell
+        key = (cell.multiplier, cell.offset, cell.length, cell.odd)
+        if key not in least or cell.above < least[key].above:
+            least[key] = cell
+    return tuple(sorted(least.values()))
+
+
+def _decide(cells: Sequence[Cell], state: _State, progress: Progress) -> None:
+    settings = state.settings
+    methods = None if settings.methods is None else tuple(method_named(name) for name in settings.methods)
+    wanted = set(cells)
+    unfinished = [
+        Batch(method, members, method_named(method).estimate(members))
+        for _, method, members in state.ledger.batches()
+        if wanted.issuperset(members) and any(not _complete(state, method, cell) for cell in members)
+        and (settings.methods is None or method in settings.methods)
+    ]  # fmt: skip
+    if unfinished:
+        _execute(unfinished, state, progress)
+    for _ in range(_MOST_ROUNDS):
+        families, names = state.done()
+        chosen = plan(
+            cells,
+            families,
+            frozenset(state.failed),
+            methods=methods,
+            evidence=settings.evidence or Evidence.CONFIRMED,
+            confirm_seconds=settings.budget or CONFIRM_SECONDS,
+            names_done=names,
+        )
+        state.refused.update(chosen.refused)
+        if not chosen.batches:
+            return
+        _execute(chosen.batches, state, progress)
+
+
+def _complete(state: _State, method: str, cell: Cell) -> bool:
+    entry = state.listings.get((method, cell))
+    return entry is not None and entry.complete
+
+
+def _execute(batches: Sequence[Batch], state: _State, progress: Progress) -> None:
+    """Run batches, recording each piece at once and each batch's lists with its last piece."""
+    settings = state.settings
+    work: dict[str, tuple[Batch, list[Piece], dict[int, PieceResult]]] = {}
+    queue: list[tuple[float, Piece, Budget]] = []
+    keys: dict[tuple[str, tuple[Cell, ...]], str] = {}
+    for batch in batches:
+        method = method_named(batch.method)
+        key = batch_key(batch.method, batch.cells)
+        pieces = method.pieces(batch.cells, _PIECE_SECONDS)
+        state.ledger.add_batch(key, batch.method, batch.cells, pieces)
+        have = {n: r for n, r in state.ledger.results(key, pieces).items() if r.complete}
+        work[key] = (batch, pieces, have)
+        keys[batch.method, batch.cells] = key
+        budget = _budget(batch, len(pieces), settings)
+        queue += [(batch.seconds / len(pieces), p, budget) for p in pieces if p.index not in have]
+        if len(have) == len(pieces):
+            state.take(_recorded(state, key, work[key], None))
+    estimated = sum(seconds for seconds, _, _ in queue)
+    progress.planned(estimated, sum(len(batch.cells) for batch in batches))
+    jobs = settings.jobs or usable_cores()
+    if settings.cluster is None and estimated < _SERIAL_SECONDS:
+        jobs = 1
+    expected = {(p.method, p.cells, p.index): seconds for seconds, p, _ in queue}
+    for results in run_orders(_orders(queue), lambda: executor(jobs, settings.cluster), 3 * jobs):
+        for result in results:
+            piece = result.piece
+            key = keys[piece.method, piece.cells]
+            work[key][2][piece.index] = result
+            state.take(_recorded(state, key, work[key], result))
+            progress.advanced(expected[piece.method, piece.cells, piece.index], piece.method)
+
+
+def _recorded(
+    state: _State,
+    key: str,
+    work: tuple[Batch, list[Piece], dict[int, PieceResult]],
+    result: PieceResult | None,
+) -> list[Listing]:
+    """Record a result; return the lists of its batch when that was the last piece."""
+    batch, pieces, have = work
+    listings = merged(batch.cells, list(have.values())) if len(have) == len(pieces) else []
+    state.ledger.add_result(key, result or have[0], listings)
+    return listings
+
+
+def _orders(queue: Sequence[tuple[float, Piece, Budget]]) -> Iterator[Order]:
+    load: list[tuple[Piece, Budget]] = []
+    seconds = 0.0
+    for estimate, piece, budget in queue:
+        load.append((piece, budget))
+        seconds += estimate
+        if seconds >= _ORDER_SECONDS or len(load) == _ORDER_PIECES:
+            yield Order(tuple(load))
+            load, seconds = [], 0.0
+    if load:
+        yield Order(tuple(load))
+
+
+def _budget(batch: Batch, pieces: int, settings: Settings) -> Budget:
+    seconds = None
+    if settings.budget is not None:
+        seconds = max(settings.budget * len(batch.cells) / pieces, 1e-3)
+    return Budget(seconds, settings.memory)
+
+
+def default_dossier(window: Window) -> Path:
+    """Return the folder that a window's dossier goes to when none is named: it depends on the window alone."""
+    return Path(f"dossier-{window_digest(window)[:12]}")

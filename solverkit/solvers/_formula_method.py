@@ -1,0 +1,116 @@
+"""An encoding with a solver, as a method that decides cells."""
+
+from __future__ import annotations
+
+import time
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+from solverkit.errors import ContradictionError, InputError
+from solverkit.exact.bounds import EXACT_LENGTH, balanced_bound
+from solverkit.findings import Cycle
+from solverkit.methods import Budget, Family, Hit, Piece, PieceResult
+from solverkit.registry import load
+from solverkit.solvers._isolation import SolverProcess
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from cycle_encodings._formula import Encoder
+    from solverkit.window import Cell
+
+__all__ = ["DEFAULT_ENCODING", "DEFAULT_SOLVER", "FormulaMethod", "formula_method"]
+
+DEFAULT_ENCODING = "orbit"
+DEFAULT_SOLVER = "cadical195"
+_MOST_CLAUSES = 50_000_000
+
+_process = SolverProcess()
+
+
+@dataclass(frozen=True, slots=True)
+class FormulaMethod:
+    """A CNF encoding with a clausal solver.
+
+    Args:
+        encoding: name of the encoding.
+        solver: name of the back end.
+    """
+
+    encoding: str
+    solver: str
+
+    @property
+    def name(self) -> str:
+        """``cnf:ENCODING@SOLVER``."""
+        return f"cnf:{self.encoding}@{self.solver}"
+
+    @property
+    def family(self) -> Family:
+        """Formulas are a family of their own: the search is the solver's."""
+        return Family.FORMULA
+
+    def _encoder(self) -> Encoder:
+        encoder: Encoder = load("encodings", self.encoding)
+        return encoder
+
+    def refusal(self, cell: Cell) -> str | None:
+        """Return why the cell can't be encoded, or None."""
+        if cell.length > EXACT_LENGTH:
+            return f"length {cell.length} is above {EXACT_LENGTH}, the limit of the encodings"
+        size = self._encoder().size(cell)
+        if size > _MOST_CLAUSES:
+            return f"about {size} clauses, more than {_MOST_CLAUSES}"
+        return None
+
+    def estimate(self, cells: Sequence[Cell]) -> float:
+        """Return seconds: encoding at about 10^6 clauses a second, then search that grows with the candidates."""
+        seconds = 0.0
+        for cell in cells:
+            candidates = max(0, balanced_bound(cell) - cell.above)
+            seconds += 0.004 + self._encoder().size(cell) * 1.2e-6 + candidates * cell.length * 2e-7
+        return seconds
+
+    def batches(self, cells: Sequence[Cell]) -> list[tuple[Cell, ...]]:
+        """Return each cell alone: formulas share nothing."""
+        return [(cell,) for cell in cells]
+
+    def pieces(self, batch: tuple[Cell, ...], seconds: float) -> list[Piece]:  # noqa: ARG002 - not yet cut
+        """Return the cell as one piece."""
+        return [Piece(self.name, batch)]
+
+    def run(self, piece: Piece, budget: Budget) -> PieceResult:
+        """List the cycles of the cell; each is substituted into the map before it counts."""
+        (cell,) = piece.cells
+        begun = time.perf_counter()
+        answer = _process.answer(cell, self.encoding, self.solver, budget.seconds, budget.memory)
+        hits = []
+        for least in answer.least:
+            cycle = Cycle(cell.multiplier, cell.offset, least, cell.length)
+            if not cycle.lies_in(cell):
+                raise ContradictionError(f"{self.name} gives {least} for {cell}, which is a cycle of another cell")
+            hits.append(Hit(cycle.length, cycle.odd, least))
+        return PieceResult(
+            piece,
+            tuple(sorted(hits)),
+            answer.complete,
+            answer.reason,
+            statistics=answer.statistics,
+            seconds=time.perf_counter() - begun,
+        )
+
+
+def formula_method(text: str) -> FormulaMethod:
+    """Return the method that ``cnf``, ``cnf:ENCODING``, ``cnf@SOLVER`` or ``cnf:ENCODING@SOLVER`` names.
+
+    Raises:
+        InputError: another form, or an unknown encoding or solver.
+    """
+    head, at, solver = text.partition("@")
+    kind, colon, encoding = head.partition(":")
+    if kind != "cnf" or (at and not solver) or (colon and not encoding):
+        raise InputError("methods", text, "cnf, cnf:ENCODING, cnf@SOLVER or cnf:ENCODING@SOLVER")
+    method = FormulaMethod(encoding or DEFAULT_ENCODING, solver or DEFAULT_SOLVER)
+    load("encodings", method.encoding)
+    load("solvers", method.solver)
+    return method

@@ -1,0 +1,161 @@
+"""A solver in a process of its own, so that a time limit is a time limit and a crash costs one cell.
+
+Native solvers can't be interrupted from Python, overrun their own limits and may end the process. The child serves one
+request after another; the parent waits no longer than the deadline, then kills it and starts another when needed.
+"""
+
+from __future__ import annotations
+
+import contextlib
+import ctypes
+import multiprocessing
+import os
+import resource
+import signal
+import sys
+import time
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any
+
+from solverkit.registry import load
+
+if TYPE_CHECKING:
+    from multiprocessing.connection import Connection
+    from multiprocessing.process import BaseProcess
+
+    from solverkit.window import Cell
+
+__all__ = ["Answer", "SolverProcess", "die_with_parent"]
+
+_PR_SET_PDEATHSIG = 1
+
+
+def die_with_parent() -> None:
+    """Have the kernel kill this process when its parent ends; only Linux can."""
+    if sys.platform == "linux":
+        ctypes.CDLL(None, use_errno=True).prctl(_PR_SET_PDEATHSIG, signal.SIGKILL)
+
+
+@dataclass(frozen=True, slots=True)
+class Answer:
+    """What one request gave.
+
+    Args:
+        least: least elements found, in the order the solver found them.
+        complete: whether the formula then had no further model.
+        reason: why not, when incomplete.
+        statistics: sizes and times.
+    """
+
+    least: tuple[int, ...]
+    complete: bool
+    reason: str
+    statistics: dict[str, int | float | str]
+
+
+class SolverProcess:
+    """The parent's end of a child process that encodes and solves cells."""
+
+    def __init__(self) -> None:
+        self._process: BaseProcess | None = None
+        self._pipe: Connection | None = None
+
+    def answer(self, cell: Cell, encoding: str, solver: str, seconds: float | None, memory: int | None) -> Answer:
+        """Encode ``cell``, list its cycles and return what came out by the deadline.
+
+        Args:
+            cell: of positive elements.
+            encoding: name of an encoding.
+            solver: name of a back end.
+            seconds: time limit, None for none.
+            memory: limit of the child's address space in bytes, None for none.
+        """
+        pipe = self._started()
+        least: list[int] = []
+        deadline = None if seconds is None else time.monotonic() + seconds
+        try:
+            pipe.send((cell, encoding, solver, memory))
+            while True:
+                left = None if deadline is None else max(0.0, deadline - time.monotonic())
+                if not pipe.poll(left):
+                    self.close()
+                    return Answer(tuple(least), False, f"no answer within {seconds:g} s", {})
+                kind, content = pipe.recv()
+                if kind == "least":
+                    least.append(content)
+                elif kind == "done":
+                    return Answer(tuple(least), True, "", content)
+                else:
+                    self.close()
+                    return Answer(tuple(least), False, content, {})
+        except (EOFError, ConnectionError):
+            code = self._exit_code()
+            self.close()
+            return Answer(tuple(least), False, f"the solver process ended with status {code}", {})
+
+    def _started(self) -> Connection:
+        if self._pipe is None or self._process is None or not self._process.is_alive():
+            self.close()
+            context = multiprocessing.get_context("spawn")
+            self._pipe, theirs = context.Pipe()
+            self._process = context.Process(target=_serve, args=(theirs,), daemon=True)
+            self._process.start()
+            theirs.close()
+        return self._pipe
+
+    def _exit_code(self) -> int | None:
+        if self._process is None:
+            return None
+        self._process.join(1)
+        return self._process.exitcode
+
+    def close(self) -> None:
+        """End the child, whatever it is doing."""
+        if self._process is not None:
+            self._process.kill()
+            self._process.join()
+            self._process.close()
+        if self._pipe is not None:
+            self._pipe.close()
+        self._process = self._pipe = None
+
+
+def _serve(pipe: Connection) -> None:
+    die_with_parent()
+    signal.signal(signal.SIGINT, signal.SIG_IGN)
+    # Native code writes notes to standard output, where the caller may be printing JSON.
+    os.dup2(2, 1)
+    with contextlib.suppress(EOFError, BrokenPipeError, ConnectionResetError):
+        while True:
+            cell, encoding, solver, memory = pipe.recv()
+            try:
+                _limit_memory(memory)
+                pipe.send(("done", _solve(pipe, cell, encoding, solver)))
+            except MemoryError:
+                pipe.send(("failed", "the memory limit was reached"))
+            except (EOFError, BrokenPipeError):
+                raise
+            except Exception as problem:  # noqa: BLE001 - any failure of a solver is an open cell
+                pipe.send(("failed", f"{type(problem).__name__}: {problem}"))
+
+
+def _limit_memory(memory: int | None) -> None:
+    _, hard = resource.getrlimit(resource.RLIMIT_AS)
+    resource.setrlimit(resource.RLIMIT_AS, (hard if memory is None else memory, hard))
+
+
+def _solve(pipe: Connection, cell: Cell, encoding: str, solver: str) -> dict[str, Any]:
+    begun = time.perf_counter()
+    formula = load("encodings", encoding).encode(cell)
+    encoded = time.perf_counter()
+    back_end = load("solvers", solver)
+    for least in back_end.least_elements(formula):
+        pipe.send(("least", least))
+    return {
+        "variables": formula.variables,
+        "clauses": len(formula.clauses),
+        "digest": formula.digest(),
+        "encode_s": round(encoded - begun, 6),
+        "solve_s": round(time.perf_counter() - encoded, 6),
+        "solver": back_end.version,
+    }
