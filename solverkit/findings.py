@@ -151,7 +151,7 @@ class CellFinding:
         seconds: computing time spent on the cell.
         reason: for ``open``, why; else what excluded the cell, or empty.
         total: exact number of cycles when they were counted and ``cycles`` is only a sample, else None.
-        contradiction: whether complete lists of two methods differ; the cell is then open and ``cycles`` holds all.
+        contradiction: whether complete lists of two methods differ; the cell is then open and has the cycles of both.
 
     Raises:
         ContradictionError: the parts do not fit each other.

@@ -7,6 +7,7 @@ import pkgutil
 from dataclasses import dataclass
 from functools import lru_cache
 from importlib.metadata import entry_points
+from itertools import pairwise
 from typing import Any
 
 from solverkit.errors import ContradictionError, InputError, MissingPartError
@@ -56,7 +57,7 @@ def parts(room: str) -> tuple[Part, ...]:
         module, _, name = point.value.partition(":")
         found.extend(_offered(room, module, name or attribute, point.name))
     found.sort(key=lambda part: part.name)
-    for one, two in zip(found, found[1:], strict=False):
+    for one, two in pairwise(found):
         if one.name == two.name:
             raise ContradictionError(f"{room}: {one.origin} and {two.origin} both offer the name {one.name}")
     return tuple(found)

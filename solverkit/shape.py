@@ -277,9 +277,7 @@ def _residue_condition(value: object, field: str) -> ResidueCondition:
     _only_known(value, field, ("of", "modulus", "in", "not_in"))
     places = [key for key in ("in", "not_in") if key in value]
     if len(places) != 1:
-        raise InputError(
-            field, " and ".join(places) or "neither in nor not_in", "exactly one of in and not_in"
-        )
+        raise InputError(field, " and ".join(places) or "neither in nor not_in", "exactly one of in and not_in")
     of = value.get("of")
     if not isinstance(of, str) or of not in {each.value for each in Among}:
         raise InputError(f"{field}.of", of, ", ".join(Among))

@@ -45,16 +45,12 @@ def _factors(shape: Shape) -> None:
         for word in words:
             for factor in shape.forbid:
                 if factor in word:
-                    raise InputError(
-                        f"shape.{name}", word, f"words without {factor}, which shape.forbid names"
-                    )
+                    raise InputError(f"shape.{name}", word, f"words without {factor}, which shape.forbid names")
     if _fixed_point_serves(shape):
         return
     forbidden = list(shape.forbid)
     if not leaves_a_word(forbidden, ()):
-        raise InputError(
-            "shape.forbid", _listed(shape.forbid), "words that some cycle with an odd element avoids"
-        )
+        raise InputError("shape.forbid", _listed(shape.forbid), "words that some cycle with an odd element avoids")
     for name, symbol in (("longest_odd_run", "1"), ("longest_even_run", "0")):
         most = getattr(shape, name)
         # A longer run is not worth an automaton of its length: no shape is refused for it here.
@@ -63,19 +59,15 @@ def _factors(shape: Shape) -> None:
             if not leaves_a_word(forbidden, ()):
                 raise InputError(f"shape.{name}", most, "a run that leaves some cycle beside shape.forbid")
     wanted = [("require", word) for word in shape.require] + [("prefix", shape.prefix)]
-    words = [word for _, word in wanted]
-    if not leaves_a_word(forbidden, words):
-        places = range(len(words))
-        first = bisect_left(places, True, key=lambda i: not leaves_a_word(forbidden, words[: i + 1]))
+    factors = [word for _, word in wanted]
+    if not leaves_a_word(forbidden, factors):
+        # The first of them that does not fit to those before it.
+        counts = range(1, len(factors) + 1)
+        first = bisect_left(counts, 1, key=lambda count: not leaves_a_word(forbidden, factors[:count]))
         name, word = wanted[first]
         raise InputError(f"shape.{name}", word, "a word that fits the other conditions on factors and runs")
-    if (
-        shape.pattern is not None
-        and compile_pattern(shape.pattern).has_closed_walk(avoiding(forbidden)) is False
-    ):
-        raise InputError(
-            "shape.pattern", shape.pattern, "a pattern of some word that the forbidden factors leave"
-        )
+    if shape.pattern is not None and compile_pattern(shape.pattern).has_closed_walk(avoiding(forbidden)) is False:
+        raise InputError("shape.pattern", shape.pattern, "a pattern of some word that the forbidden factors leave")
 
 
 def _fixed_point_serves(shape: Shape) -> bool:
@@ -101,21 +93,15 @@ def _numbers(shape: Shape) -> None:
         return
     sizes = [abs(number) for number in shape.contains]
     if shape.contains[0] < 0 < shape.contains[-1]:
-        raise InputError(
-            "shape.contains", _listed(shape.contains), "numbers of one sign: a cycle has only one"
-        )
+        raise InputError("shape.contains", _listed(shape.contains), "numbers of one sign: a cycle has only one")
     for number in shape.contains:
         if number in shape.excludes:
             raise InputError("shape.contains", number, "numbers that shape.excludes does not name")
         for condition in shape.residues:
             if condition.of is Among.ALL and not condition.admits(number):
-                raise InputError(
-                    "shape.contains", number, "numbers with the residues that shape.residues wants of all"
-                )
+                raise InputError("shape.contains", number, "numbers with the residues that shape.residues wants of all")
     if shape.largest_at_most is not None and max(sizes) > shape.largest_at_most:
-        raise InputError(
-            "shape.contains", max(sizes), f"numbers up to shape.largest_at_most = {shape.largest_at_most}"
-        )
+        raise InputError("shape.contains", max(sizes), f"numbers up to shape.largest_at_most = {shape.largest_at_most}")
     if shape.ratio_at_most is not None and Fraction(max(sizes), min(sizes)) > shape.ratio_at_most:
         raise InputError(
             "shape.contains",

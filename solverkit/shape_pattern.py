@@ -109,9 +109,7 @@ class _Reader:
 
     def bounded(self, size: int) -> int:
         if size > MAX_EXPANDED:
-            raise self.refused(
-                f"it has over {MAX_EXPANDED} symbols and operators with its counts written out"
-            )
+            raise self.refused(f"it has over {MAX_EXPANDED} symbols and operators with its counts written out")
         return size
 
     def counts(self) -> tuple[int, int | None] | None:
@@ -169,9 +167,7 @@ class Pattern:
 
     def __init__(self, text: str, name: str = "shape.pattern") -> None:
         if len(text) > MAX_PATTERN:
-            raise InputError(
-                name, f"a pattern of {len(text)} characters", f"at most {MAX_PATTERN} characters"
-            )
+            raise InputError(name, f"a pattern of {len(text)} characters", f"at most {MAX_PATTERN} characters")
         self.text = text
         self._jumps: list[list[int]] = []  # state -> states reached without reading
         self._reads: list[tuple[str, int] | None] = []  # state -> the symbol it reads and the state then
@@ -241,9 +237,7 @@ class Pattern:
                     after[reached] = after.get(reached, 0) | rotations
             begun = place + 1 - length
             if begun >= 0:
-                if any(
-                    rotations >> begun & 1 for states, rotations in after.items() if self._final in states
-                ):
+                if any(rotations >> begun & 1 for states, rotations in after.items() if self._final in states):
                     return True
                 younger = ~((2 << begun) - 1)
                 after = {states: left for states, rotations in after.items() if (left := rotations & younger)}

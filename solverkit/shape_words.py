@@ -162,10 +162,7 @@ def avoiding(forbidden: Iterable[str]) -> list[tuple[int, int]]:
     def allowed(state: int) -> int:
         return -1 if ends[state] else state
 
-    return [
-        (-1, -1) if ends[state] else (allowed(even), allowed(odd))
-        for state, (even, odd) in enumerate(children)
-    ]
+    return [(-1, -1) if ends[state] else (allowed(even), allowed(odd)) for state, (even, odd) in enumerate(children)]
 
 
 def _components(following: Sequence[Sequence[int]]) -> list[int]:

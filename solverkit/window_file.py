@@ -139,7 +139,9 @@ def _maps_of_table(table: Mapping[str, Any]) -> tuple[Map, ...]:
         _only_known(each, "map")
         for key in _KEYS["map"]:
             if key not in each:
-                raise InputError(f"map.{key}", "nothing", "this key, beside " + " and ".join(k for k in _KEYS["map"] if k != key))
+                raise InputError(
+                    f"map.{key}", "nothing", "this key, beside " + " and ".join(k for k in _KEYS["map"] if k != key)
+                )
         offsets = each["offsets"]
         parts = offsets if isinstance(offsets, list) else [offsets]
         maps += _maps(each["multiplier"], parts, "map.multiplier", "map.offsets")
@@ -182,7 +184,9 @@ def _maps(multiplier: object, offsets: Sequence[object], field: str, offset_fiel
         else:
             d = parse_integer(part, offset_field)
             if d % 2 == 0:
-                raise InputError(offset_field, part, "an odd integer, positive or negative; even ones may only lie in a range")
+                raise InputError(
+                    offset_field, part, "an odd integer, positive or negative; even ones may only lie in a range"
+                )
             maps.append(Map(q, d))
     return maps
 

@@ -102,7 +102,7 @@ def balanced_word(length: int, odd: int) -> str:
 
 
 def lyndon_words(length: int, odd: int) -> Iterator[str]:
-    """Yield the Lyndon words of ``length`` with ``odd`` ones, lexicographically least rotations, in constant amortised time.
+    """Yield the Lyndon words of ``length`` with ``odd`` ones (least rotations) in constant amortised time.
 
     The positions a_1 < … < a_x of the ones are extended while the prefix stays the prefix of a necklace: with the
     longest Lyndon prefix ending at the p-th one, the next one stands no later than a_(t+1−p) + a_p, where p stays,
@@ -115,7 +115,7 @@ def lyndon_words(length: int, odd: int) -> Iterator[str]:
     """
     if length < 1 or not 0 <= odd <= length:
         return
-    if odd == 0 or odd == length:
+    if odd in {0, length}:
         if length == 1:
             yield str(odd)
         return

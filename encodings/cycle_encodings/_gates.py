@@ -87,7 +87,7 @@ class Builder:
         true = self.true
         if -true in (one, two) or one == -two:
             return -true
-        if one == true or one == two:
+        if one in {true, two}:
             return two
         if two == true:
             return one

@@ -1,7 +1,6 @@
 """The orbit encoding: bits of every element, one addition a step, exact prefix counters, "least element first".
 
-A step is out = h + p·(((q − 1)/2)·n + (d + 1)/2) with n = 2h + p, in two's complement, wide enough that the result is
-exact: for (3, 1) and (3, −1) this is one adder a step, in general one for each one in (q − 1)/2 and one for the
+A step is out = h + p·(((q − 1)/2)·n + (d + 1)/2) with n = 2h + p, in two's complement, wide enough to be exact: for (3, 1) and (3, −1) this is one adder a step, in general one for each one in (q − 1)/2 and one for the
 constant. A state (i, j), "j odd steps among the first i", is a literal; only states that `element_windows` admits exist,
 and each guards the exact range of its element. Every element after the first is strictly larger than the first, so each
 cycle is one model, and a word that repeats a shorter one is none.
@@ -18,6 +17,7 @@ are compared.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import TYPE_CHECKING
 
 from cycle_encodings._formula import Encoding
@@ -77,7 +77,8 @@ class Orbit:
             return Encoding(cell, builder.variables, tuple(builder.clauses), builder.finished(), (), builder.names)
         spans = [windows.elements(i) for i in range(cell.length + 1)]
         elements = [
-            [builder.variable(f"n[{i}].{place}") for place in range(span.high.bit_length())] for i, span in enumerate(spans)
+            [builder.variable(f"n[{i}].{place}") for place in range(span.high.bit_length())]
+            for i, span in enumerate(spans)
         ]
         self._steps(builder, cell, elements)
         builder.group("closing")
@@ -97,7 +98,7 @@ class Orbit:
     def _steps(self, builder: Builder, cell: Cell, elements: list[list[int]]) -> None:
         builder.group("step")
         factor, constant = (cell.multiplier - 1) // 2, (cell.offset + 1) // 2
-        for bits, image in zip(elements, elements[1:], strict=False):
+        for bits, image in pairwise(elements):
             odd = bits[0]
             # The exact value lies in [−|d|, q·2^w + |d|]; with this width only the true image agrees mod 2^width.
             reach = max((cell.multiplier << len(bits)) + abs(cell.offset), (1 << len(image)) + abs(cell.offset))

@@ -42,8 +42,15 @@ def progress_bar() -> Iterator[Progress | None]:
         yield None
         return
     from rich.console import Console  # noqa: PLC0415
-    from rich.progress import BarColumn, Progress, SpinnerColumn, TaskProgressColumn, TextColumn  # noqa: PLC0415
-    from rich.progress import TimeElapsedColumn, TimeRemainingColumn  # noqa: PLC0415
+    from rich.progress import (  # noqa: PLC0415  # noqa: PLC0415
+        BarColumn,
+        Progress,
+        SpinnerColumn,
+        TaskProgressColumn,
+        TextColumn,
+        TimeElapsedColumn,
+        TimeRemainingColumn,
+    )
 
     bar = Progress(
         SpinnerColumn(),

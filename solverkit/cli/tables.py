@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import Counter
-from decimal import Decimal
+from decimal import MIN_EMIN, Decimal, localcontext
 from typing import TYPE_CHECKING, Any
 
 from rich import box
@@ -130,7 +130,8 @@ def print_triage(examined: Triage, most: int) -> None:
                   f"({examined.criterion.value} bound):")  # fmt: skip
     console.print(_live_table(examined.window, shown))
     if not examined.regions:
-        total = sum((live.forecast().expected for live in examined.cells), Decimal(0))
+        with localcontext(Emin=MIN_EMIN):
+            total = sum((live.forecast().expected for live in examined.cells), Decimal(0))
         console.print(f"Expected number of cycles in the whole window: {_amount(total)}.")
     if len(shown) < examined.live:
         console.print("More with --most N; all of them with --format json.")
@@ -176,9 +177,10 @@ def _print_why_empty(examined: Triage, console: Console) -> None:
     if best:
         bound, length, odd, side = max(best, key=lambda entry: entry[0])
         console.print(
-            f"Every least element n satisfies 2^k·n^x ≤ (q·n + d)^x (d < 0: ≥). The largest n that any cell of the right "
-            f"sign\nallows is U = {_number(bound)}, in the cell k = {_number(length)}, x = {_number(odd)} of {side.map} "
-            f"({side.sign.word} elements); the window asks for n > {_number(window.bound)}."
+            "Every least element n satisfies 2^k·n^x ≤ (q·n + d)^x (≥ where d and n have opposite signs).\n"
+            f"The largest n that a cell of the right sign allows is U = {_number(bound)}, in the cell k = {_number(length)},"
+            f" x = {_number(odd)} of {side.map} ({side.sign.word} elements);\n"
+            f"the window asks for more than {_number(window.bound)}."
         )
 
 
@@ -194,7 +196,9 @@ def print_settlement(settlement: Settlement, folder: Path) -> None:
     number = len(cycles) + sum((f.total or 0) - len(f.cycles) for f in counted)
     what = "no cycle" if not number else f"{number:,} cycle{'s' if number != 1 else ''}"
     if settlement.contradictions:
-        console.print("[bold red]Two methods contradict each other.[/bold red] Both results are kept; please report this.")
+        console.print(
+            "[bold red]Two methods contradict each other.[/bold red] Both results are kept; please report this."
+        )
     elif open_cells:
         console.print(f"[bold yellow]Not settled:[/bold yellow] {what} so far, {len(open_cells)} cells are open.")
     else:
@@ -206,18 +210,31 @@ def print_settlement(settlement: Settlement, folder: Path) -> None:
     for finding in (settlement.contradictions or open_cells)[:12]:
         cell = finding.cell
         console.print(
-            f"  {finding.verdict.value}: {cell.map} {cell.sign.word} k = {cell.length}, x = {cell.odd}: {escape(finding.reason)}"
+            f"  {finding.verdict.value}: {cell.map} {cell.sign.word} k = {cell.length}, x = {cell.odd}: "
+            f"{escape(finding.reason)}"
         )
     if len(open_cells) > 12:
         console.print(f"  … and {len(open_cells) - 12} more; --format json lists all")
-    console.print(f"\nDossier: {escape(str(folder))} ({settlement.seconds:.1f} s; the same command returns at once, or goes on).")
+    console.print(
+        f"\nDossier: {escape(str(folder))} ({settlement.seconds:.1f} s; the same command returns at once, or goes on)."
+    )
     if open_cells and not settlement.contradictions:
         console.print("To go on: the same command with a larger --budget or --limit-memory, or other --methods.")
 
 
 def _print_cycles(settlement: Settlement, console: Console) -> None:
     table = _table(
-        "map", "least", "largest", "length k", "odd x", "k + x", "circuits", "gcd", "chance of cell", "evidence<", "word<"
+        "map",
+        "least",
+        "largest",
+        "length k",
+        "odd x",
+        "k + x",
+        "circuits",
+        "gcd",
+        "chance of cell",
+        "evidence<",
+        "word<",
     )
     shown = 0
     chances = {live.cell: live for live in settlement.triage.cells}
@@ -267,7 +284,9 @@ def print_catalog(document: dict[str, Any]) -> None:
         table = _table(f"{room[:-1]}<", *(f"{key}<" for key in keys), "file<")
         for entry in entries:
             if "broken" in entry:
-                table.add_row(entry["name"], f"broken: {entry['broken']}", *[""] * (len(keys) - 1), entry["file"], style="red")
+                table.add_row(
+                    entry["name"], f"broken: {entry['broken']}", *[""] * (len(keys) - 1), entry["file"], style="red"
+                )
             else:
                 table.add_row(entry["name"], *(_cell(entry[key]) for key in keys), entry["file"])
         console.print(table)

@@ -36,9 +36,7 @@ def _stated(
     above: Annotated[
         str | None, _option("--above", metavar="B", help="Least elements above B in absolute value; also 2^71.")
     ] = None,
-    sign: Annotated[
-        str | None, _option("--sign", metavar="SIGN", help="positive (default), negative or both.")
-    ] = None,
+    sign: Annotated[str | None, _option("--sign", metavar="SIGN", help="positive (default), negative or both.")] = None,
     *,
     primitive: Annotated[
         bool | None, _option("--primitive/--any-gcd", help="Only cycles without a common factor with d.")

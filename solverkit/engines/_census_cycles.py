@@ -128,17 +128,13 @@ def wanted_cycles(
     most = size if at_most is None else min(at_most, size)
     check = _check_compiled if shape.fits_word() else _check_plain
     visited = 0
-    blocks = screened_words(
-        shape.multiplier, shape.length, shape.odd, divisor, share=share, deadline=deadline
-    )
+    blocks = screened_words(shape.multiplier, shape.length, shape.odd, divisor, share=share, deadline=deadline)
     for block in blocks:
         visited = block.visited
         offsets, least = check(shape, block, dividing, most) if block.count else ([], [])
         yield Found(offsets, least, visited)
     if (share is None or share.count == 1) and visited != lyndon_count(shape.length, shape.odd):
-        raise ContradictionError(
-            f"{shape}: visited {visited} words, not all {lyndon_count(shape.length, shape.odd)}"
-        )
+        raise ContradictionError(f"{shape}: visited {visited} words, not all {lyndon_count(shape.length, shape.odd)}")
 
 
 @lru_cache(maxsize=4)
@@ -153,9 +149,7 @@ def _arrays(shape: Shape) -> tuple[NDArray[np.uint64], np.uint64, NDArray[np.uin
     return *rare_weights(shape.length, shape.odd, weight), primes, powers
 
 
-def _check_compiled(
-    shape: Shape, block: Block, dividing: int | None, most: int
-) -> tuple[list[int], list[int]]:
+def _check_compiled(shape: Shape, block: Block, dividing: int | None, most: int) -> tuple[list[int], list[int]]:
     from solverkit.engines._census_kernels import check_words  # noqa: PLC0415 - numba loads only when it is used
 
     offsets, least = np.empty(block.count, np.uint64), np.empty(block.count, np.int64)

@@ -22,9 +22,7 @@ _ZERO, _ONE = np.uint64(0), np.uint64(1)
 
 
 @njit(cache=True, nogil=True)
-def scan_words(
-    length, fractions, slack, state, place, period, latest, partial, depth, stride, index, quota, found
-):
+def scan_words(length, fractions, slack, state, place, period, latest, partial, depth, stride, index, quota, found):
     """Store the places of the rarer letter in further words that pass the screen; return how many.
 
     Args:
@@ -99,9 +97,7 @@ def _store(found, row, place, rare, free, length):
 
 
 @njit(cache=True, nogil=True)
-def check_words(
-    words, count, weights, constant, primes, powers, multiplier, negative, target, most, offsets, least
-):
+def check_words(words, count, weights, constant, primes, powers, multiplier, negative, target, most, offsets, least):
     """Keep the words whose offset is wanted; return how many, with their offsets and least elements.
 
     Args:

@@ -65,9 +65,7 @@ class Block:
             yield row if self.letter else sorted(set(range(length)).difference(row))
 
 
-def rare_weights(
-    length: int, odd: int, weight: Callable[[int, int], int]
-) -> tuple[NDArray[np.uint64], np.uint64]:
+def rare_weights(length: int, odd: int, weight: Callable[[int, int], int]) -> tuple[NDArray[np.uint64], np.uint64]:
     """Return the terms of the rarer letter and the constant, modulo 2^64.
 
     Args:

@@ -37,8 +37,10 @@ class Joined:
     """What the join of one range of residues gave.
 
     Args:
-        left: sums of the left half that may have a partner.
+        left: sums of the left half that may have a partner, some of them more than once.
         right: likewise of the right half; every pair within the slack is among left × right.
+        left_places: for each of ``left`` its stream and its place in the list, of shape (number, 2).
+        right_places: likewise.
         emitted: number of sums of each half in the range that were compared.
         buckets: number of buckets.
         reason: why it ended early, or empty.
@@ -46,6 +48,8 @@ class Joined:
 
     left: npt.NDArray[np.uint64]
     right: npt.NDArray[np.uint64]
+    left_places: npt.NDArray[np.int64]
+    right_places: npt.NDArray[np.int64]
     emitted: tuple[int, int]
     buckets: int
     reason: str
@@ -58,6 +62,7 @@ class _Side:
         self.half = half
         self.at = np.zeros(len(half.base), np.int64)
         self.pool = np.empty(1 << 16, np.uint64)
+        self.places = np.empty((1 << 16, 2), np.int64)
         mean = half.count() * width // CIRCLE
         self._allocate(mean + mean // 8 + 4096)
         self._before = half.below(low)
@@ -73,6 +78,7 @@ class _Side:
     def enlarge_pool(self) -> None:
         """Double the pool and keep what it holds."""
         self.pool = np.concatenate([self.pool, np.empty_like(self.pool)])
+        self.places = np.concatenate([self.places, np.empty_like(self.places)])
 
     @property
     def streams(self) -> tuple[npt.NDArray[Any], ...]:
@@ -81,7 +87,7 @@ class _Side:
 
     @property
     def arrays(self) -> tuple[npt.NDArray[Any], ...]:
-        return *self.streams, self.buffer, self.carry, self.pool
+        return *self.streams, self.buffer, self.carry, self.pool, self.places
 
     def check(self, emitted: int, high: int) -> None:
         """Compare the number of sums that were written out with that found by binary search.
@@ -160,4 +166,13 @@ def join_range(left: Half, right: Half, low: int, high: int, slack: int, most: i
     for side, number in zip(sides, emitted, strict=True):
         side.check(number, min(low + done * width, high))
     kept = int(state[kernels.POOLED_LEFT]), int(state[kernels.POOLED_RIGHT])
-    return Joined(sides[0].pool[: kept[0]], sides[1].pool[: kept[1]], emitted, done, reason)
+    left_side, right_side = sides
+    return Joined(
+        left_side.pool[: kept[0]],
+        right_side.pool[: kept[1]],
+        left_side.places[: kept[0]],
+        right_side.places[: kept[1]],
+        emitted,
+        done,
+        reason,
+    )

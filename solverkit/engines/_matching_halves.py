@@ -102,25 +102,24 @@ class Half:
             total += int((stop - start).sum()) + len(tails) * int(wrapped.sum())
         return total
 
-    def words_of(self, sums: Iterable[int]) -> dict[int, list[int]]:
-        """Return all words of this half for each of the given sums; about a millisecond a sum."""
-        wanted = np.array(sorted(set(sums)), np.uint64)
-        found: dict[int, list[int]] = {int(value): [] for value in wanted}
-        stream = 0
-        for leaf in self.leaves:
-            tails = self.values[self.first[stream] : self.end[stream]]
-            stream += len(leaf.heads)
-            order: npt.NDArray[np.int64] | None = None
-            for value in wanted:
-                rest = value - leaf.heads
-                start, stop = np.searchsorted(tails, rest), np.searchsorted(tails, rest, side="right")
-                for head in np.flatnonzero(stop > start):
-                    if order is None:
-                        node = (leaf.step, leaf.ones)
-                        order = np.argsort(_tails(self.words, self.weights, [node])[node], kind="stable")
-                    for rank in order[start[head] : stop[head]]:
-                        tail = self.words.word(leaf.step, leaf.ones, int(rank))
-                        found[int(value)].append(leaf.words[head] | tail)
+    def words_at(self, places: Iterable[tuple[int, int]]) -> dict[tuple[int, int], int]:
+        """Return the word of the sum base[s] + values[p] for each given (stream s, place p), bit j for step j.
+
+        The lists that are needed are made again, unsorted, about 0.1 s for each million of values.
+        """
+        wanted = sorted(set(places))
+        borders = np.cumsum([0] + [len(leaf.heads) for leaf in self.leaves]).tolist()
+        found: dict[tuple[int, int], int] = {}
+        for number, leaf in enumerate(self.leaves):
+            low, high = borders[number], borders[number + 1]
+            here = [(stream, place) for stream, place in wanted if low <= stream < high]
+            if not here:
+                continue
+            node = (leaf.step, leaf.ones)
+            order = np.argsort(_tails(self.words, self.weights, [node])[node], kind="stable")
+            for stream, place in here:
+                tail = self.words.word(*node, int(order[place - self.first[stream]]))
+                found[stream, place] = leaf.words[stream - low] | tail
         return found
 
 

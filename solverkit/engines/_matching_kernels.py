@@ -190,6 +190,36 @@ def _thin(buffer, filled, others, number, slack, shift, multiplier, top, table):
 
 
 @njit(cache=True, nogil=True)
+def _locate(
+    base, first, end, values, at, origin, width, slack, buffer, filled, top, table, pool, places, pooled
+):  # fmt: skip
+    """Append the residue, the stream and the place of the distances in ``buffer``, and of a few others, to the pool.
+
+    Walks back from where the streams stand after the bucket. Returns the new length of the pool, −1 when it is full.
+    """
+    table[:] = _ZERO
+    for i in range(filled):
+        spot = (buffer[i] * _HASH) >> top
+        table[spot >> _SIX] |= _ONE << (spot & _IN_WORD)
+    for i in range(base.size):
+        shift = base[i] - origin
+        place = at[i]
+        for _ in range(end[i] - first[i]):
+            place = (end[i] if place == first[i] else place) - 1
+            distance = values[place] + shift
+            if distance + slack >= width + slack:
+                break
+            spot = (distance * _HASH) >> top
+            if (table[spot >> _SIX] >> (spot & _IN_WORD)) & _ONE:
+                if pooled >= pool.size:
+                    return -1
+                pool[pooled] = distance + origin
+                places[pooled, 0], places[pooled, 1] = i, place
+                pooled += 1
+    return pooled
+
+
+@njit(cache=True, nogil=True)
 def restart(base, first, end, values, at, origin, slack, buffer, carry):
     """Set the streams to ``origin`` and carry what lies less than ``slack`` before it; return how many, −1 if too many."""
     _seek(base, first, end, values, at, origin - slack)
@@ -199,8 +229,8 @@ def restart(base, first, end, values, at, origin, slack, buffer, carry):
 
 @njit(cache=True, nogil=True)
 def join(
-    left_base, left_first, left_end, left_values, left_at, left, left_carry, left_pool,
-    right_base, right_first, right_end, right_values, right_at, right, right_carry, right_pool,
+    left_base, left_first, left_end, left_values, left_at, left, left_carry, left_pool, left_places,
+    right_base, right_first, right_end, right_values, right_at, right, right_carry, right_pool, right_places,
     origin, width, buckets, slack, shift, fine, cells, table, state,
 ):  # fmt: skip
     """Join ``buckets`` buckets from ``origin`` on; what may have a partner is appended to the pools, as residues.
@@ -240,14 +270,17 @@ def join(
                 number = _thin(right, number, left, count, slack, fine, multiplier, top, table)
             multiplier *= _REHASH
         if count and number:
-            if state[POOLED_LEFT] + count > left_pool.size or state[POOLED_RIGHT] + number > right_pool.size:
+            pooled_left = _locate(
+                left_base, left_first, left_end, left_values, left_at, origin, width, slack, left, count, top, table,
+                left_pool, left_places, state[POOLED_LEFT],
+            )  # fmt: skip
+            pooled_right = _locate(
+                right_base, right_first, right_end, right_values, right_at, origin, width, slack, right, number, top,
+                table, right_pool, right_places, state[POOLED_RIGHT],
+            )  # fmt: skip
+            if pooled_left < 0 or pooled_right < 0:
                 return CROWDED
-            for i in range(count):
-                left_pool[state[POOLED_LEFT] + i] = left[i] + origin
-            for i in range(number):
-                right_pool[state[POOLED_RIGHT] + i] = right[i] + origin
-            state[POOLED_LEFT] += count
-            state[POOLED_RIGHT] += number
+            state[POOLED_LEFT], state[POOLED_RIGHT] = pooled_left, pooled_right
         state[EMITTED_LEFT] += emitted_left
         state[EMITTED_RIGHT] += emitted_right
         state[_CARRIED_LEFT] = left_carried

@@ -34,11 +34,13 @@ class Profile:
     """What the cells of one map allow, as a function of the candidate.
 
     Args:
-        low: the least candidate is above this.
+        low: every candidate is above this.
         high: no candidate is above this.
         bounds: upper bounds of the cells, ascending, without repeats.
         lengths: largest length of a cell whose bound is at least the one at the same place.
         odds: largest odd count of such a cell.
+        cells: the cells that have candidates, by ascending bound.
+        places: for each of ``bounds``, the place of the first cell with it.
     """
 
     low: int
@@ -46,6 +48,8 @@ class Profile:
     bounds: tuple[int, ...]
     lengths: tuple[int, ...]
     odds: tuple[int, ...]
+    cells: tuple[Cell, ...]
+    places: tuple[int, ...]
 
     @property
     def candidates(self) -> int:
@@ -53,46 +57,38 @@ class Profile:
         return max(0, (self.high + 1) // 2 - (self.low + 1) // 2)
 
     def limits(self, first: int) -> tuple[int, int]:
-        """Return the largest length and the largest odd count of a cell that has a candidate of at least ``first``."""
+        """Return the largest length, and the largest odd count, of the cells whose bound is at least ``first``."""
         place = bisect_left(self.bounds, first)
         return (self.lengths[place], self.odds[place]) if place < len(self.bounds) else (0, 0)
 
-    def breaks(self, first: int, last: int) -> list[int]:
-        """Return ascending last elements of parts of ``first`` … ``last`` with about constant limits; ``last`` ends."""
-        ends: list[int] = []
-        while first <= last:
-            place = bisect_left(self.bounds, first)
-            if place == len(self.bounds):
-                end = last
-            else:
-                # At least a doubling a part, so that there are few parts.
-                doubled = bisect_left(self.bounds, 2 * first)
-                end = self.bounds[min(max(place, doubled), len(self.bounds) - 1)]
-            ends.append(min(end, last))
-            first = ends[-1] + 1
-        return ends
+    def reaching(self, first: int) -> tuple[Cell, ...]:
+        """Return the cells whose bound is at least ``first``."""
+        place = bisect_left(self.bounds, first)
+        return self.cells[self.places[place] :] if place < len(self.bounds) else ()
 
 
 def profile(cells: Sequence[Cell]) -> Profile:
-    """Return the profile of cells of one map; cells that have no candidate are left out."""
-    live = sorted(
-        (bound, cell.length, cell.odd, cell.above)
-        for cell in cells
-        if (bound := cell_bound(cell)) > cell.above
-    )
+    """Return the profile of cells of one map; cells without a candidate are left out."""
+    live = sorted((bound, cell) for cell in cells if (bound := cell_bound(cell)) > cell.above)
     if not live:
-        return Profile(0, 0, (), (), ())
+        return Profile(0, 0, (), (), (), (), ())
     bounds: list[int] = []
     lengths: list[int] = []
     odds: list[int] = []
+    places: list[int] = []
     length = odd = 0
-    for bound, k, x, _ in reversed(live):
-        length, odd = max(length, k), max(odd, x)
+    for place in range(len(live) - 1, -1, -1):
+        bound, cell = live[place]
+        length, odd = max(length, cell.length), max(odd, cell.odd)
         if bounds and bounds[-1] == bound:
-            lengths[-1], odds[-1] = length, odd
+            lengths[-1], odds[-1], places[-1] = length, odd, place
         else:
             bounds.append(bound)
             lengths.append(length)
             odds.append(odd)
-    low = min(above for _, _, _, above in live)
-    return Profile(low, live[-1][0], tuple(reversed(bounds)), tuple(reversed(lengths)), tuple(reversed(odds)))
+            places.append(place)
+    backwards = (tuple(reversed(column)) for column in (bounds, lengths, odds, places))
+    ascending, most_steps, most_odd, first_places = backwards
+    low = min(cell.above for _, cell in live)
+    ordered = tuple(cell for _, cell in live)
+    return Profile(low, live[-1][0], ascending, most_steps, most_odd, ordered, first_places)

@@ -146,9 +146,7 @@ def prefix_table(multiplier: int, plan: Plan, deadline: float | None = None) -> 
         steps = min(plan.group, length - step)
         since_carry += steps
         # One digit may use all its 64 bits as long as every count fits into it.
-        if plan.largest(step + steps) >> 64 and (
-            since_carry > kernels.HEADROOM or not plan.largest(step) >> 64
-        ):
+        if plan.largest(step + steps) >> 64 and (since_carry > kernels.HEADROOM or not plan.largest(step) >> 64):
             _carry(kernels.carry, counts, active)
             since_carry = steps
         kernels.add_steps(counts, active, step, steps, plan.low, plan.high, length, twos, inverses)
@@ -211,9 +209,7 @@ def solution_words(
                 _check(deadline)
                 # α(v) = −(α(u) + c·q^(−1−a)·2^h)·2^(h−k)·q^(a+c)
                 stride = -pow(2, half - length, modulus) * pow(multiplier, ones + letter, modulus) % modulus
-                start = (
-                    letter * stride * pow(multiplier, -1 - ones, modulus) * pow(2, half, modulus) % modulus
-                )
+                start = letter * stride * pow(multiplier, -1 - ones, modulus) * pow(2, half, modulus) % modulus
                 product = _product(table, ones, rest, start, stride)
                 total += 2 * product if mirrored and ones < rest else product
     return total

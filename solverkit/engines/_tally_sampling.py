@@ -29,10 +29,10 @@ if TYPE_CHECKING:
 
     from solverkit.window import Cell
 
-__all__ = ["sample_words"]
+__all__ = ["alpha", "sample_words", "suffix_length"]
 
-_LONGEST_SUFFIX = 24
-_DENSITY = 4
+#: Longest suffix. The table takes time and memory in proportion; 20 letters leave about 150 trials a word at M = 10^7.
+_LONGEST_SUFFIX = 20
 
 
 class _Suffixes:
@@ -89,20 +89,18 @@ def alpha(word: str, multiplier: int, modulus: int) -> int:
 
 
 def suffix_length(cell: Cell, modulus: int, memory: int) -> int:
-    """Return m: enough letters for a few suffixes a residue, as far as the limits allow."""
+    """Return m: enough letters for a suffix for each residue, as far as the limits allow."""
     length = 0
     while (
         length < min(_LONGEST_SUFFIX, cell.length)
-        and comb(length, length // 2) < _DENSITY * modulus
+        and comb(length, length // 2) < modulus
         and Plan(length + 1, 0, min(length + 1, cell.odd), modulus).bytes <= memory
     ):
         length += 1
     return length
 
 
-def sample_words(
-    cell: Cell, modulus: int, seed: int, memory: int, deadline: float | None = None
-) -> Iterator[str]:
+def sample_words(cell: Cell, modulus: int, seed: int, memory: int, deadline: float | None = None) -> Iterator[str]:
     """Yield uniformly random aperiodic solution words of ``cell``, without end; at least one must exist.
 
     Args:

@@ -119,20 +119,26 @@ def _match(cell: Cell, chosen: Plan, piece: Piece, memory: int, found: _Found, d
 
     left, right = _halves(cell, chosen, chosen.most_tails(memory))
     if chosen.way is Way.SORTED:
-        ys, zs = left.values + left.base, right.values + right.base  # one stream each
-        compared = left.count(), right.count()
+        compared, places = (left.count(), right.count()), None
+        # One stream each.
+        ys, zs = (half.values[: half.count()] + half.base for half in (left, right))
     else:
         low, high = (CIRCLE * (piece.index + i) // piece.count for i in (0, 1))
         joined = join_range(left, right, low, high, slack(cell.odd), 4 * _MOST_PROPOSALS, deadline)
         ys, zs, compared, found.reason = joined.left, joined.right, joined.emitted, joined.reason
+        places = joined.left_places, joined.right_places
         found.statistics["buckets"] = joined.buckets
     pairs = near_pairs(ys, zs, slack(cell.odd), _MOST_PROPOSALS)
     found.statistics.update(left=compared[0], right=compared[1], streams=len(left.base) + len(right.base))
     if pairs is None:
         found.reason = f"more than {_MOST_PROPOSALS} pairs of sums match"
         return
-    found.statistics["pairs"] = len(pairs)
-    _substitute(cell, _proposed(pairs, left, right, chosen), found, deadline)
+    i, j = pairs[:, 0], pairs[:, 1]
+    ends = [
+        list(map(tuple, (np.stack([np.zeros_like(of), of], axis=1) if places is None else places[side][of]).tolist()))
+        for side, of in enumerate((i, j))
+    ]
+    _substitute(cell, _proposed(ends, left, right, chosen), found, deadline)
 
 
 def _halves(cell: Cell, chosen: Plan, most: int) -> tuple[Half, Half]:

@@ -1,7 +1,7 @@
 """Sweep: every candidate for a least element is iterated until it drops, returns, or can no longer return.
 
-Orbit side of the cycle equation. All cells of a batch belong to one map of positive elements; one pass over the odd n
-with B < n ≤ U' (U' the largest balanced bound of the cells) serves all their lengths and odd counts.
+Orbit side of the cycle equation. All cells of a batch belong to one map of positive elements; one pass over the odd
+n with B < n ≤ U' (U' the largest balanced bound of the cells) serves all their lengths and odd counts.
 """
 
 from __future__ import annotations
@@ -10,8 +10,8 @@ from functools import lru_cache
 from time import perf_counter, process_time
 from typing import TYPE_CHECKING
 
-from solverkit.engines._sweep_orbit import closes
 from solverkit.engines._sweep_ranges import Profile, cell_bound, profile
+from solverkit.engines._sweep_search import Search
 from solverkit.methods import Budget, Family, Hit, Piece, PieceResult
 
 if TYPE_CHECKING:
@@ -22,8 +22,6 @@ if TYPE_CHECKING:
 __all__ = ["ENGINE", "Sweep"]
 
 _LONGEST = 1e7  # seconds on one core beyond which a cell is refused
-_PYTHON_STEPS = 20_000  # candidates × steps below which no kernel is loaded
-_WORK = 100_000_000  # steps between two looks at the clock: about 0.1 to 0.3 s
 _STEP_SECONDS = 1.1e-9
 _PYTHON_STEP_SECONDS = 1e-7
 
@@ -76,25 +74,19 @@ class Sweep:
         return [Piece(self.name, batch, i, count, (cuts[i] + 1, cuts[i + 1])) for i in range(count)]
 
     def run(self, piece: Piece, budget: Budget) -> PieceResult:
-        """Iterate every candidate of one part."""
+        """Search one part; when the time is over, ``swept_to`` in the statistics tells how far it is complete."""
         started, worked = perf_counter(), process_time()
         first, last = piece.detail
         shape = _profile(piece.cells)
-        found: set[tuple[int, int, int]] = set()
-        swept, handed, reason = first - 1, 0, ""
-        for end in shape.breaks(first, last):
-            length, odd = shape.limits(swept + 1)
-            while swept < end:
-                if budget.seconds is not None and perf_counter() - started > budget.seconds:
-                    reason = f"the budget of {budget.seconds:g} s ended at candidate {swept}"
-                    break
-                swept, more = _scan(piece.cells[0], swept + 1, end, length, odd, found)
-                handed += more
-            if reason:
+        here = piece.cells[0]
+        search = Search(here.multiplier, here.offset, shape.low, shape.limits, shape.reaching)
+        swept, reason = first - 1, ""
+        for swept in search.stretch(first, last):
+            if swept < last and budget.seconds is not None and perf_counter() - started > budget.seconds:
+                reason = f"the budget of {budget.seconds:g} s ended at candidate {swept}"
                 break
         wanted = {(cell.length, cell.odd): cell.above for cell in piece.cells}
-        hits = sorted(Hit(k, x, n) for n, k, x in found if (k, x) in wanted and n > wanted[k, x])
-        examined = (swept + 1) // 2 - first // 2
+        hits = sorted(Hit(k, x, n) for n, k, x in search.found if (k, x) in wanted and n > wanted[k, x])
         return PieceResult(
             piece,
             tuple(hits),
@@ -104,8 +96,9 @@ class Sweep:
                 "first": str(first),
                 "last": str(last),
                 "swept_to": str(swept),
-                "candidates": examined,
-                "handed_over": handed,
+                "candidates": (swept + 1) // 2 - first // 2,
+                "handed_over": 0,
+                **search.counters,
             },
             seconds=process_time() - worked,
         )
@@ -113,35 +106,6 @@ class Sweep:
 
 def _fits(cell: Cell, high: int) -> bool:
     return cell.multiplier < 1 << 31 and abs(cell.offset) < 1 << 61 and high < 1 << 62
-
-
-def _scan(
-    cell: Cell, first: int, last: int, length: int, odd: int, found: set[tuple[int, int, int]]
-) -> tuple[int, int]:
-    """Iterate candidates from ``first`` for a short time; return the last integer done and the orbits handed over."""
-    q, d = cell.multiplier, cell.offset
-    n = first | 1
-    few = (last - first) * min(length, 100) < _PYTHON_STEPS
-    if few or not _fits(cell, last):
-        stop = min(last, n + 2 * max(1, _PYTHON_STEPS // max(1, min(length, 100))))
-        for candidate in range(n, stop + 1, 2):
-            if end := closes(q, d, candidate, length, odd):
-                found.add((candidate, *end))
-        return stop, 0
-    from solverkit.engines._sweep_simple import scan, table  # noqa: PLC0415 - numba loads only when it pays
-
-    rows = table()
-    limit = ((1 << 63) - 1 - abs(d)) // q
-    count, after, _ = scan(q, d, n, last, length, odd, limit, _WORK, rows)
-    handed = 0
-    for candidate, k, x in rows[:count].tolist():
-        if k:
-            found.add((candidate, k, x))
-        else:
-            handed += 1
-            if end := closes(q, d, candidate, length, odd):
-                found.add((candidate, *end))
-    return min(last, int(after) - 1), handed
 
 
 ENGINE = Sweep()

@@ -32,7 +32,7 @@ _CACHED = 200_000
 _ADDITION, _ADDITION_FAR = 0.12e-9, 0.45e-9
 _LOOK_UP, _LOOK_UP_FAR = 6e-9, 30e-9
 _PRODUCT = 1.5e-9
-_SUFFIX_ADDITIONS = 300
+_SUFFIX_ADDITIONS = 200
 _HALF_WORD = 1.2e-7
 _LISTED_STEP = 6e-7
 
@@ -72,9 +72,7 @@ def count_cycles(cell: Cell, deadline: float | None = None, memory: int | None =
             length, odd = cell.length // folds, cell.odd // folds
             determinant = (1 << length) - cell.multiplier**odd
             modulus = abs(determinant) // gcd(determinant, cell.offset)
-            words += sign * solution_words(
-                cell.multiplier, length, odd, modulus, deadline=deadline, memory=memory
-            )
+            words += sign * solution_words(cell.multiplier, length, odd, modulus, deadline=deadline, memory=memory)
     cycles, rest = divmod(words, cell.length)
     if rest:
         raise ContradictionError(f"{cell}: {words} aperiodic solutions are not a multiple of the length")
@@ -123,9 +121,7 @@ class Tally:
         if plan.planes > MAX_PLANES:
             return f"counts of {56 * plan.planes} bits; at most {56 * MAX_PLANES} are possible"
         if plan.bytes > self.memory:
-            return (
-                f"the table of residues mod {modulus} takes {plan.bytes >> 20} MiB of {self.memory >> 20} MiB"
-            )
+            return f"the table of residues mod {modulus} takes {plan.bytes >> 20} MiB of {self.memory >> 20} MiB"
         return None
 
     def _is_small(self, cell: Cell, modulus: int) -> bool:
@@ -182,9 +178,7 @@ class Tally:
             if total is not None:
                 totals.append((cell.length, cell.odd, total))
         seconds = time.thread_time() - started
-        return PieceResult(
-            piece, tuple(sorted(hits)), not reasons, "; ".join(reasons), tuple(totals), seconds=seconds
-        )
+        return PieceResult(piece, tuple(sorted(hits)), not reasons, "; ".join(reasons), tuple(totals), seconds=seconds)
 
     def _decide(self, cell: Cell, deadline: float | None, memory: int) -> tuple[list[int], int | None]:
         """Return least elements, and the number of cycles when they are a sample."""
@@ -194,9 +188,7 @@ class Tally:
         if self._is_small(cell, modulus):
             return listing.list_cycles(cell, modulus, deadline), None
         if modulus >= _LARGEST_MODULUS:
-            raise CapacityError(
-                self.name, f"the modulus |D|/gcd(D, d) has {modulus.bit_length()} bits, more than 31"
-            )
+            raise CapacityError(self.name, f"the modulus |D|/gcd(D, d) has {modulus.bit_length()} bits, more than 31")
         total = count_cycles(cell, deadline, memory)
         if total == 0:
             return [], None
@@ -207,9 +199,7 @@ class Tally:
                 )
             return self._sample(cell, modulus, total, deadline, memory), total
         if 8 * listing.list_cost(cell) > memory:
-            raise CapacityError(
-                self.name, f"listing {total} cycles takes {listing.list_cost(cell)} half words"
-            )
+            raise CapacityError(self.name, f"listing {total} cycles takes {listing.list_cost(cell)} half words")
         least = listing.list_cycles(cell, modulus, deadline)
         if len(least) != total:
             raise ContradictionError(f"{cell}: {total} cycles counted but {len(least)} listed")

@@ -51,10 +51,8 @@ def forecast(cell: Cell) -> Forecast:
     with precision(2 * _DIGITS * 4 + 64):
         count = arb(fmpz(words))
         expected = count / fmpz(modulus)
-        if modulus == 1:
-            chance = arb(min(words, 1))
-        else:
-            chance = -(count * (-1 / arb(fmpz(modulus))).log1p()).expm1()
+        certain = arb(min(words, 1))
+        chance = certain if modulus == 1 else -(count * (-1 / arb(fmpz(modulus))).log1p()).expm1()
         return Forecast(words, _decimal(expected), _decimal(chance))
 
 

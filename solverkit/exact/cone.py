@@ -157,7 +157,9 @@ class ThinCone:
         """Number of cells in the ranges with sign(D) = sign(d)."""
         if self.empty_range:
             return 0
-        below = self._critical.capped(self.odd, self.lengths.high) - self._critical.capped(self.odd, self.lengths.low - 1)
+        below = self._critical.capped(self.odd, self.lengths.high) - self._critical.capped(
+            self.odd, self.lengths.low - 1
+        )
         # Below the critical line also lie pairs with k < x, which are no cells.
         low_pairs = self._short(self.lengths.high) - self._short(self.lengths.low - 1)
         below -= low_pairs

@@ -135,7 +135,9 @@ def element_windows(cell: Cell, bound: int | None = None, rounds: int = 30) -> W
             if ordered is None or low > high:
                 continue
             # The same from the other end: n_0 = (q^(x−j)·n_i + d·γ_i)/2^(k−i) < n_i.
-            back = in_order(1 << (k - i), -d * (gamma_low if d > 0 else gamma_high), left, ordered.low, ordered.high, strictly)
+            back = in_order(
+                1 << (k - i), -d * (gamma_low if d > 0 else gamma_high), left, ordered.low, ordered.high, strictly
+            )
             if back is None:
                 continue
             rooms[i, j] = Room(back, Span(low, high), Span(beta_low, beta_high), Span(gamma_low, gamma_high))
@@ -147,9 +149,7 @@ def element_windows(cell: Cell, bound: int | None = None, rounds: int = 30) -> W
     return Windows(cell, top, rooms)
 
 
-def _prefixes(
-    cell: Cell, top: int, power: list[int], allowed: set[State] | None
-) -> dict[State, tuple[int, int]]:
+def _prefixes(cell: Cell, top: int, power: list[int], allowed: set[State] | None) -> dict[State, tuple[int, int]]:
     """Return (i, j) -> least and largest β_i over the prefixes on admissible states, forwards."""
     q, d, k, x = cell.multiplier, cell.offset, cell.length, cell.odd
     reach: dict[State, tuple[int, int]] = {(0, 0): (0, 0)}
@@ -171,9 +171,7 @@ def _prefixes(
     return reach
 
 
-def _suffixes(
-    cell: Cell, power: list[int], prefix: dict[State, tuple[int, int]]
-) -> dict[State, tuple[int, int]]:
+def _suffixes(cell: Cell, power: list[int], prefix: dict[State, tuple[int, int]]) -> dict[State, tuple[int, int]]:
     """Return (i, j) -> least and largest γ_i over the suffixes on admissible states, backwards."""
     k, x = cell.length, cell.odd
     reach: dict[State, tuple[int, int]] = {}

@@ -11,7 +11,7 @@ import json
 import sqlite3
 from contextlib import contextmanager
 from hashlib import sha256
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, Self
 
 from solverkit.errors import DossierError
 from solverkit.methods import Hit, Listing, Piece, PieceResult
@@ -47,13 +47,12 @@ def batch_key(method: str, cells: Sequence[Cell]) -> str:
 
 
 def _cells_out(cells: Sequence[Cell]) -> list[list[int | str]]:
-    return [
-        [json_integer(value) for value in (c.multiplier, c.offset, c.length, c.odd, c.above)] for c in cells
-    ]
+    return [[json_integer(value) for value in (c.multiplier, c.offset, c.length, c.odd, c.above)] for c in cells]
 
 
 def _cells_in(text: str) -> tuple[Cell, ...]:
-    return tuple(Cell(*(int(value) for value in row)) for row in json.loads(text))
+    rows = ([int(value) for value in row] for row in json.loads(text))
+    return tuple(Cell(q, d, k, x, above) for q, d, k, x, above in rows)
 
 
 class Ledger:
@@ -112,7 +111,7 @@ class Ledger:
                 reason = f"the ledger can't be used ({text}); move the folder away or name another one"
             raise DossierError(self._path, reason) from problem
 
-    def __enter__(self) -> Ledger:
+    def __enter__(self) -> Self:
         return self
 
     def __exit__(self, *_: object) -> None:
@@ -163,7 +162,7 @@ class Ledger:
             run("BEGIN")
             try:
                 row = run("SELECT pieces FROM batch WHERE key = ?", (key,)).fetchone()
-                details = {n: d for n, d in run("SELECT number, detail FROM piece WHERE batch = ?", (key,))}
+                details = dict(run("SELECT number, detail FROM piece WHERE batch = ?", (key,)).fetchall())
                 wanted = {p.index: _detail(p) for p in pieces}
                 if row is not None and (row[0] != len(pieces) or any(wanted.get(n) != d for n, d in details.items())):
                     run("DELETE FROM piece WHERE batch = ?", (key,))
@@ -205,7 +204,7 @@ class Ledger:
         }
 
     def add_result(self, key: str, result: PieceResult, listings: Sequence[Listing] = ()) -> None:
-        """Record the result of a piece, and with the last piece of a batch the lists it completes, in one transaction."""
+        """Record the result of a piece and, with the last one of a batch, the lists it completes: one transaction."""
         with self._errors():
             run = self._connection.execute
             run("BEGIN")

@@ -1,9 +1,9 @@
 """The residue transition graph mod 2^m and what lies on its closed walks of given length and odd count.
 
-r leads to T(r) mod 2^m and to T(r) + 2^(m−1) mod 2^m, since T(n) mod 2^(m−1) depends only on n mod 2^m. The parity of r
-labels both edges. Reading off the next m parities carries the graph onto the de Bruijn graph B(2, m), for every odd q
-and d (Terras 1976; Lagarias, Amer. Math. Monthly 92 (1985) 3-23), so its closed walks of length k with x odd steps, counted
-with their starting point, number C(k, x).
+r leads to T(r) mod 2^m and to T(r) + 2^(m−1) mod 2^m, since T(n) mod 2^(m−1) depends only on n mod 2^m. The parity of
+r labels both edges. Reading off the next m parities carries the graph onto the de Bruijn graph B(2, m), for every odd
+q and d (Terras 1976; Lagarias, Amer. Math. Monthly 92 (1985) 3-23), so its closed walks of length k with x odd steps,
+counted with their starting point, number C(k, x).
 """
 
 from __future__ import annotations
@@ -69,9 +69,7 @@ def closed_walk_count(graph: nx.DiGraph, length: int, odd: int) -> int:
     return sum(_walks_from(graph, following, start, length, odd) for start in graph)
 
 
-def _walks_from(
-    graph: nx.DiGraph, following: dict[int, tuple[int, ...]], start: int, length: int, odd: int
-) -> int:
+def _walks_from(graph: nx.DiGraph, following: dict[int, tuple[int, ...]], start: int, length: int, odd: int) -> int:
     # The coefficient of 2^(j·width) counts the walks with j odd steps; counts stay below 2^width.
     width = 2 * length + 2
     mask = (1 << (width * (odd + 1))) - 1
@@ -111,9 +109,7 @@ def pruned(graph: nx.DiGraph, length: int, odd: int, starts: Container[int] | No
     return result
 
 
-def _edges_on_walks(
-    following: dict[int, tuple[int, ...]], start: int, length: int, odd: int
-) -> set[tuple[int, int]]:
+def _edges_on_walks(following: dict[int, tuple[int, ...]], start: int, length: int, odd: int) -> set[tuple[int, int]]:
     # Bit j of an integer: reachable with j odd steps. Backwards: bit j says that j more odd steps close the walk.
     mask = (1 << (odd + 1)) - 1
     back = [{start: 1}]

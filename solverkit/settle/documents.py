@@ -7,7 +7,6 @@ from itertools import islice
 from typing import TYPE_CHECKING, Any
 
 from solverkit.exact.bounds import EXACT_LENGTH, balanced_bound, product_bound
-from solverkit.exact.chances import forecast
 from solverkit.exact.cone import ThinCone, tallest
 from solverkit.exact.reduction import reduced
 from solverkit.findings import CellFinding, Cycle, Evidence, Verdict
@@ -149,7 +148,10 @@ def settle_document(settlement: Settlement, dossier: str, *, all_cells: bool = F
     cells = [_finding_entry(finding, bounds[finding.cell]) for finding in settlement.findings]
     if all_cells:
         cells += _excluded_entries(examined)
-        order = {side: place for place, side in enumerate((s.map.multiplier, s.map.offset, s.sign.word) for s in window.sides())}
+        order = {
+            side: place
+            for place, side in enumerate((s.map.multiplier, s.map.offset, s.sign.word) for s in window.sides())
+        }
         cells.sort(key=lambda e: (order[int(e["multiplier"]), int(e["offset"]), e["sign"]], e["length"], e["odd"]))
     assumption = window.assumption
     return {

@@ -15,7 +15,7 @@ __all__ = ["methods_for"]
 
 
 def methods_for(cells: list[LiveCell]) -> dict[Cell, tuple[str, float]]:
-    """Return cell -> (method, estimated seconds on one core for the cell alone); cells that no method takes are left out.
+    """Return cell -> (method, estimated seconds on one core for the cell alone), without cells that no method takes.
 
     Args:
         cells: live cells of any maps; cells with the same reduced cell share one decision.

@@ -143,7 +143,10 @@ def run_orders(orders: Iterable[Order], make: Callable[[], Executor], in_flight:
                     if again.tries < _TRIES:
                         waiting.append(again)
                     else:
-                        yield [_failed(piece, "its worker died three times", time.perf_counter()) for piece, _ in order.pieces]
+                        yield [
+                            _failed(piece, "its worker died three times", time.perf_counter())
+                            for piece, _ in order.pieces
+                        ]
             if broken:
                 pool = _renewed(pool, make)
     finally:

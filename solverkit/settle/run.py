@@ -21,7 +21,6 @@ from solverkit.window_file import window_digest, window_table
 if TYPE_CHECKING:
     from collections.abc import Iterable, Iterator, Sequence
 
-
     from solverkit.methods import Family, Listing, Piece, PieceResult
     from solverkit.window import Cell, Window
 
@@ -195,7 +194,9 @@ def _opened(window: Window, dossier: Path) -> Ledger:
     try:
         dossier.mkdir(parents=True, exist_ok=True)
     except OSError as problem:
-        raise DossierError(dossier, f"can't be made ({problem.strerror}); name another folder with --dossier") from problem
+        raise DossierError(
+            dossier, f"can't be made ({problem.strerror}); name another folder with --dossier"
+        ) from problem
     ledger = Ledger(dossier / "ledger.sqlite")
     try:
         ledger.bind(window, window_digest(window), window_table(window))

@@ -43,7 +43,9 @@ def conclude(
     """
     small = live.reduction.cell
     usable = [entry for entry in lists.get(_key(small), ()) if entry.cell.above <= small.above]
-    complete = [entry for entry in usable if entry.complete and (entry.total is None or entry.cell.above == small.above)]
+    complete = [
+        entry for entry in usable if entry.complete and (entry.total is None or entry.cell.above == small.above)
+    ]
     known = sorted({n for entry in usable for n in entry.least if n > small.above})
     cycles = tuple(
         cycle for cycle in sorted((_cycle(live, n) for n in known), key=Cycle.sort_key) if _wanted(window, cycle)
@@ -51,7 +53,9 @@ def conclude(
     seconds = sum(entry.seconds for entry in usable)
     names = tuple(dict.fromkeys(entry.method for entry in complete))
     if not complete:
-        reason = "; ".join(f"{entry.method}: {entry.reason}" for entry in usable) or refused.get(_key(small), "not yet run")
+        reason = "; ".join(f"{entry.method}: {entry.reason}" for entry in usable) or refused.get(
+            _key(small), "not yet run"
+        )
         return CellFinding(live.cell, Verdict.OPEN, cycles, seconds=seconds, reason=reason)
     listed = {_above(entry, small) for entry in complete if entry.total is None}
     counts = {entry.total for entry in complete if entry.total is not None} | {len(least) for least in listed}

@@ -417,5 +417,5 @@ def test_factors_that_a_de_bruijn_word_has_together():
 def test_the_first_word_that_does_not_fit_is_named():
     """Of several words the one is blamed that can't be had together with those before it."""
     with pytest.raises(InputError) as caught:
-        Shape(forbid=("0010", "1101", "0011", "1100"), require=("00", "01", "101"))
-    assert (caught.value.field, caught.value.given) == ("shape.require", "01")
+        Shape(forbid=("0011", "1011"), require=("00", "01", "1100", "11000"))
+    assert (caught.value.field, caught.value.given) == ("shape.require", "1100")
