@@ -73,6 +73,8 @@ class Cycle:
 
     def __post_init__(self) -> None:
         step = Map(self.multiplier, self.offset).step
+        if self.length < 1 or self.least == 0:
+            raise self._refused("a cycle has at least one element, and 0 has no sign")
         value, largest, common, total, marks = self.least, self.least, self.offset, 0, bytearray()
         for _ in range(self.length):
             marks.append(49 if value & 1 else 48)
@@ -132,10 +134,8 @@ class Cycle:
 
     def lies_in(self, cell: Cell) -> bool:
         """Tell whether this cycle belongs to ``cell``, its bound and sign included."""
-        return (
-            (self.multiplier, self.offset, self.length, self.odd) == (cell.multiplier, cell.offset, cell.length, cell.odd)
-            and self.least * cell.sign > cell.above
-        )  # fmt: skip
+        same = (self.multiplier, self.offset, self.length) == (cell.multiplier, cell.offset, cell.length)
+        return same and self.odd == cell.odd and self.least * cell.sign > cell.above
 
 
 @dataclass(frozen=True, slots=True)

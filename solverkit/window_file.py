@@ -213,7 +213,7 @@ def _shape(table: Mapping[str, Any]) -> Shape | None:
     stated = table["shape"]
     if not isinstance(stated, Mapping):
         raise InputError("shape", stated, "a table [shape] of side conditions")
-    return shape_from_table(stated)
+    return shape_from_table(stated) if stated else None
 
 
 def _offset_parts(offsets: list[int]) -> list[int | str]:

@@ -1,9 +1,10 @@
 """The orbit encoding: bits of every element, one addition a step, exact prefix counters, "least element first".
 
-A step is out = h + p·(((q − 1)/2)·n + (d + 1)/2) with n = 2h + p, in two's complement, wide enough to be exact: for (3, 1) and (3, −1) this is one adder a step, in general one for each one in (q − 1)/2 and one for the
-constant. A state (i, j), "j odd steps among the first i", is a literal; only states that `element_windows` admits exist,
-and each guards the exact range of its element. Every element after the first is strictly larger than the first, so each
-cycle is one model, and a word that repeats a shorter one is none.
+A step is out = h + p·(((q − 1)/2)·n + (d + 1)/2) with n = 2h + p, in two's complement, wide enough to be exact: for
+(3, 1) and (3, −1) this is one adder a step, in general one for each one in (q − 1)/2 and one for the constant. A state
+(i, j), "j odd steps among the first i", is a literal; only states that `element_windows` admits exist, and each guards
+the exact range of its element. Every element after the first is strictly larger than the first, so each cycle is one
+model, and a word that repeats a shorter one is none.
 
 Condition groups: ``step`` (the map), ``closing`` (the last image is the first element), ``odd count`` (the prefix
 counters), ``order`` (least element first), ``lower bound`` (above B), ``upper bound`` (at most U'), ``ranges`` (exact

@@ -178,8 +178,8 @@ def _print_why_empty(examined: Triage, console: Console) -> None:
         bound, length, odd, side = max(best, key=lambda entry: entry[0])
         console.print(
             "Every least element n satisfies 2^k·n^x ≤ (q·n + d)^x (≥ where d and n have opposite signs).\n"
-            f"The largest n that a cell of the right sign allows is U = {_number(bound)}, in the cell k = {_number(length)},"
-            f" x = {_number(odd)} of {side.map} ({side.sign.word} elements);\n"
+            f"The largest n that a cell of the right sign allows is U = {_number(bound)}, in the cell "
+            f"k = {_number(length)}, x = {_number(odd)} of {side.map} ({side.sign.word} elements);\n"
             f"the window asks for more than {_number(window.bound)}."
         )
 

@@ -1,4 +1,4 @@
-"""Primitive cycles of one cell shape (q, k, x), whatever the offset.
+"""Primitive cycles of one frame (q, k, x), whatever the offset.
 
 Every aperiodic word is a primitive cycle for exactly one |d|, namely |D|/gcd(D, β), with the sign of D when
 the elements are positive: n = d·β/D is an integer exactly when |D|/gcd(D, β) divides d, and for that d itself
@@ -29,14 +29,14 @@ if TYPE_CHECKING:
 
     from solverkit.engines._census_scan import Block
 
-__all__ = ["Found", "Shape", "smooth_part", "wanted_cycles"]
+__all__ = ["Found", "Frame", "smooth_part", "wanted_cycles"]
 
 #: Up to this bound the product of all primes is made, 1.4 million bits at 10^6.
 _LONGEST_PRIMORIAL = 10_000_000
 
 
 @dataclass(frozen=True, slots=True)
-class Shape:
+class Frame:
     """What a cell is without its offset.
 
     Args:
@@ -71,7 +71,7 @@ class Found:
     Args:
         offsets: |d| of each.
         least: least element of each, positive.
-        visited: words visited so far, by all blocks of the shape together.
+        visited: words visited so far, by all blocks of the frame together.
     """
 
     offsets: list[int]
@@ -99,7 +99,7 @@ def smooth_part(number: int, most: int) -> int:
 
 
 def wanted_cycles(
-    shape: Shape,
+    frame: Frame,
     *,
     dividing: int | None = None,
     at_most: int | None = None,
@@ -109,7 +109,7 @@ def wanted_cycles(
     """Yield the primitive cycles of positive elements whose |d| divides or does not exceed a given number.
 
     Args:
-        shape: (q, k, x).
+        frame: (q, k, x).
         dividing: keep |d| if it divides this divisor of D, or None.
         at_most: keep |d| up to this, or None.
         share: which part of the words to run over, or None for all.
@@ -119,46 +119,46 @@ def wanted_cycles(
         CapacityError: the deadline has passed.
         ContradictionError: the number of words visited is not the number of Lyndon words.
     """
-    size = abs(shape.determinant)
+    size = abs(frame.determinant)
     divisor = 1
     if dividing is not None:
         divisor = size // gcd(size, dividing)
     elif at_most is not None:
         divisor = size // smooth_part(size, at_most)
     most = size if at_most is None else min(at_most, size)
-    check = _check_compiled if shape.fits_word() else _check_plain
+    check = _check_compiled if frame.fits_word() else _check_plain
     visited = 0
-    blocks = screened_words(shape.multiplier, shape.length, shape.odd, divisor, share=share, deadline=deadline)
+    blocks = screened_words(frame.multiplier, frame.length, frame.odd, divisor, share=share, deadline=deadline)
     for block in blocks:
         visited = block.visited
-        offsets, least = check(shape, block, dividing, most) if block.count else ([], [])
+        offsets, least = check(frame, block, dividing, most) if block.count else ([], [])
         yield Found(offsets, least, visited)
-    if (share is None or share.count == 1) and visited != lyndon_count(shape.length, shape.odd):
-        raise ContradictionError(f"{shape}: visited {visited} words, not all {lyndon_count(shape.length, shape.odd)}")
+    if (share is None or share.count == 1) and visited != lyndon_count(frame.length, frame.odd):
+        raise ContradictionError(f"{frame}: visited {visited} words, not all {lyndon_count(frame.length, frame.odd)}")
 
 
 @lru_cache(maxsize=4)
-def _arrays(shape: Shape) -> tuple[NDArray[np.uint64], np.uint64, NDArray[np.uint64], NDArray[np.uint64]]:
+def _arrays(frame: Frame) -> tuple[NDArray[np.uint64], np.uint64, NDArray[np.uint64], NDArray[np.uint64]]:
     """Return the terms and the constant of β, the primes of D and their powers in D."""
 
     def weight(j: int, p: int) -> int:
-        return int(shape.multiplier ** (shape.odd - 1 - j)) << p
+        return int(frame.multiplier ** (frame.odd - 1 - j)) << p
 
-    factors = sorted(((int(p), int(p) ** e) for p, e in fmpz(shape.determinant).factor()), reverse=True)
+    factors = sorted(((int(p), int(p) ** e) for p, e in fmpz(frame.determinant).factor()), reverse=True)
     primes, powers = (np.array([pair[i] for pair in factors], np.uint64) for i in (0, 1))
-    return *rare_weights(shape.length, shape.odd, weight), primes, powers
+    return *rare_weights(frame.length, frame.odd, weight), primes, powers
 
 
-def _check_compiled(shape: Shape, block: Block, dividing: int | None, most: int) -> tuple[list[int], list[int]]:
+def _check_compiled(frame: Frame, block: Block, dividing: int | None, most: int) -> tuple[list[int], list[int]]:
     from solverkit.engines._census_kernels import check_words  # noqa: PLC0415 - numba loads only when it is used
 
     offsets, least = np.empty(block.count, np.uint64), np.empty(block.count, np.int64)
     kept = check_words(
         block.places,
         block.count,
-        *_arrays(shape),
-        shape.multiplier,
-        shape.determinant < 0,
+        *_arrays(frame),
+        frame.multiplier,
+        frame.determinant < 0,
         np.uint64(dividing or 0),
         np.uint64(most),
         offsets,
@@ -167,17 +167,17 @@ def _check_compiled(shape: Shape, block: Block, dividing: int | None, most: int)
     return offsets[:kept].tolist(), least[:kept].tolist()
 
 
-def _check_plain(shape: Shape, block: Block, dividing: int | None, most: int) -> tuple[list[int], list[int]]:
-    size, sign = abs(shape.determinant), 1 if shape.determinant > 0 else -1
+def _check_plain(frame: Frame, block: Block, dividing: int | None, most: int) -> tuple[list[int], list[int]]:
+    size, sign = abs(frame.determinant), 1 if frame.determinant > 0 else -1
     offsets, least = [], []
-    for ones in block.ones(shape.length):
+    for ones in block.ones(frame.length):
         beta = 0
         for place in ones:
-            beta = beta * shape.multiplier + (1 << place)
+            beta = beta * frame.multiplier + (1 << place)
         common = gcd(size, beta)
         offset = size // common
         if offset <= most and not (dividing and dividing % offset):
-            orbit = Map(shape.multiplier, sign * offset).orbit(beta // common, shape.length - 1)
+            orbit = Map(frame.multiplier, sign * offset).orbit(beta // common, frame.length - 1)
             offsets.append(offset)
             least.append(min(orbit))
     return offsets, least

@@ -14,6 +14,7 @@ from __future__ import annotations
 
 import time
 from dataclasses import dataclass
+from itertools import accumulate, repeat
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -125,8 +126,10 @@ def screened_words(
         return
     from solverkit.engines._census_kernels import scan_words  # noqa: PLC0415 - numba loads only when it is used
 
+    powers, twos = _residues(multiplier, odd, divisor), _residues(2, length, divisor)
+
     def fraction(j: int, p: int) -> int:
-        return (pow(multiplier, odd - 1 - j, divisor) * pow(2, p, divisor) % divisor << 64) // divisor
+        return (powers[odd - 1 - j] * twos[p] % divisor << 64) // divisor
 
     fractions, constant = rare_weights(length, odd, fraction)
     state = np.array([1, 0, 0], np.int64)
@@ -142,6 +145,13 @@ def screened_words(
             raise CapacityError("census", "the time budget ended before the words did")
         count = scan_words(length, fractions, np.uint64(odd), *scratch, *worker, found)
         yield Block(found, int(count), letter, int(state[2]))
+
+
+def _residues(base: int, count: int, modulus: int) -> list[int]:
+    """Return the first ``count`` powers of ``base``, from the 0-th on, mod ``modulus``."""
+    return list(
+        accumulate(repeat(base, count - 1), lambda power, factor: power * factor % modulus, initial=1 % modulus)
+    )
 
 
 def _few(length: int, rare: int) -> NDArray[np.uint16]:

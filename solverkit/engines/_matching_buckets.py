@@ -4,10 +4,12 @@ from __future__ import annotations
 
 import time
 from dataclasses import dataclass
+from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
+from solverkit.engines._matching_halves import Pool
 from solverkit.errors import ContradictionError
 
 if TYPE_CHECKING:
@@ -37,19 +39,15 @@ class Joined:
     """What the join of one range of residues gave.
 
     Args:
-        left: sums of the left half that may have a partner, some of them more than once.
+        left: sums of the left half that may have a partner.
         right: likewise of the right half; every pair within the slack is among left × right.
-        left_places: for each of ``left`` its stream and its place in the list, of shape (number, 2).
-        right_places: likewise.
         emitted: number of sums of each half in the range that were compared.
         buckets: number of buckets.
         reason: why it ended early, or empty.
     """
 
-    left: npt.NDArray[np.uint64]
-    right: npt.NDArray[np.uint64]
-    left_places: npt.NDArray[np.int64]
-    right_places: npt.NDArray[np.int64]
+    left: Pool
+    right: Pool
     emitted: tuple[int, int]
     buckets: int
     reason: str
@@ -82,12 +80,14 @@ class _Side:
 
     @property
     def streams(self) -> tuple[npt.NDArray[Any], ...]:
+        """The arrays that the kernels call streams."""
         half = self.half
         return half.base, half.first, half.end, half.values, self.at
 
     @property
-    def arrays(self) -> tuple[npt.NDArray[Any], ...]:
-        return *self.streams, self.buffer, self.carry, self.pool, self.places
+    def arrays(self) -> tuple[Any, ...]:
+        """What the kernels call a side."""
+        return self.streams, self.buffer, self.carry, self.pool, self.places
 
     def check(self, emitted: int, high: int) -> None:
         """Compare the number of sums that were written out with that found by binary search.
@@ -118,7 +118,7 @@ def join_range(left: Half, right: Half, low: int, high: int, slack: int, most: i
     Raises:
         ContradictionError: the number of sums compared is not the number there is.
     """
-    from solverkit.engines import _matching_kernels as kernels  # noqa: PLC0415 - numba loads only when it is used
+    kernels: Any = import_module("solverkit.engines._matching_kernels")  # numba loads only when it is used
 
     share = left.count() * (high - low) // CIRCLE + 1
     buckets = max(-(-share // _BUCKET), -(-(high - low) // _WIDEST))
@@ -138,10 +138,8 @@ def join_range(left: Half, right: Half, low: int, high: int, slack: int, most: i
             break
         origin = low + done * width
         if not placed:
-            carried = [
-                kernels.restart(*side.streams, np.uint64(origin % CIRCLE), np.uint64(slack), side.buffer, side.carry)
-                for side in sides
-            ]
+            start, near = np.uint64(origin % CIRCLE), np.uint64(slack)
+            carried = [kernels.restart(side.streams, start, near, side.buffer, side.carry) for side in sides]
             state[-2:] = carried
             placed = min(carried) >= 0
             answer = kernels.DONE if placed else kernels.FULL
@@ -149,10 +147,18 @@ def join_range(left: Half, right: Half, low: int, high: int, slack: int, most: i
             # The last bucket is narrower, by less than the number of buckets.
             last = done == buckets - 1
             answer = kernels.join(
-                *sides[0].arrays, *sides[1].arrays, np.uint64(origin % CIRCLE), np.uint64(high - origin if last else width),
-                1 if last else min(_STRIDE, buckets - 1 - done), np.uint64(slack), np.uint64(shift), np.uint64(fine),
-                cells, table, state,
-            )  # fmt: skip
+                sides[0].arrays,
+                sides[1].arrays,
+                np.uint64(origin % CIRCLE),
+                np.uint64(high - origin if last else width),
+                1 if last else min(_STRIDE, buckets - 1 - done),
+                np.uint64(slack),
+                np.uint64(shift),
+                np.uint64(fine),
+                cells,
+                table,
+                state,
+            )
             done, placed = int(state[kernels.BUCKETS]), answer == kernels.DONE
         for side in sides:
             if answer == kernels.FULL:
@@ -166,13 +172,5 @@ def join_range(left: Half, right: Half, low: int, high: int, slack: int, most: i
     for side, number in zip(sides, emitted, strict=True):
         side.check(number, min(low + done * width, high))
     kept = int(state[kernels.POOLED_LEFT]), int(state[kernels.POOLED_RIGHT])
-    left_side, right_side = sides
-    return Joined(
-        left_side.pool[: kept[0]],
-        right_side.pool[: kept[1]],
-        left_side.places[: kept[0]],
-        right_side.places[: kept[1]],
-        emitted,
-        done,
-        reason,
-    )
+    pools = [Pool(side.pool[:number], side.places[:number]) for side, number in zip(sides, kept, strict=True)]
+    return Joined(pools[0], pools[1], emitted, done, reason)

@@ -9,13 +9,13 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 if TYPE_CHECKING:
-    from collections.abc import Collection, Iterable
+    from collections.abc import Collection
 
     import numpy.typing as npt
 
     Sums = npt.NDArray[np.uint64]
 
-__all__ = ["PAD", "Half", "HalfWords", "build"]
+__all__ = ["PAD", "Half", "HalfWords", "Pool", "build"]
 
 #: Copies of the last value behind every sorted list, so that a kernel may read that far beyond its end.
 PAD = 16
@@ -23,7 +23,7 @@ PAD = 16
 
 @dataclass(frozen=True, slots=True)
 class HalfWords:
-    """The words of steps ``start`` … ``stop`` − 1 with ``ones`` ones, the first of which is the ``index``-th of the word.
+    """The words of steps ``start`` … ``stop`` − 1 with ``ones`` ones; the first one is the ``index``-th of the cycle.
 
     They are the paths of a lattice from (start, 0) to (stop, ones), a node being (step, ones so far).
     """
@@ -36,7 +36,7 @@ class HalfWords:
     def ways(self, step: int, ones: int) -> int:
         """Return the number of paths from a node to the end."""
         missing = self.ones - ones
-        return comb(self.stop - step, missing) if 0 <= missing else 0
+        return comb(self.stop - step, missing) if missing >= 0 else 0
 
     def word(self, step: int, ones: int, rank: int) -> int:
         """Return the path of rank ``rank`` from a node to the end, bit j for step j; the order is that of `_tails`."""
@@ -59,6 +59,19 @@ class _Leaf:
     ones: int
     heads: Sums
     words: list[int]
+
+
+@dataclass(frozen=True, slots=True)
+class Pool:
+    """Some sums of a half.
+
+    Args:
+        residues: uint64, the sums, some of them perhaps more than once.
+        places: int64, of shape (number, 2): for each its stream and its place in ``values``.
+    """
+
+    residues: Sums
+    places: npt.NDArray[np.int64]
 
 
 @dataclass(frozen=True, slots=True)
@@ -87,8 +100,15 @@ class Half:
         """Return the number of sums."""
         return int((self.end - self.first).sum())
 
+    def whole(self) -> Pool:
+        """Return all sums of a half of one stream."""
+        number = self.count()
+        assert len(self.base) == 1
+        places = np.stack([np.zeros(number, np.int64), np.arange(number)], axis=1)
+        return Pool(self.values[:number] + self.base, places)
+
     def below(self, bound: int) -> int:
-        """Return the number of sums, as residues 0 … 2^64 − 1, that are less than ``bound`` ≤ 2^64; by binary search."""
+        """Return, by binary search, the number of sums that are less than ``bound`` ≤ 2^64 as residues 0 … 2^64 − 1."""
         total = stream = 0
         for leaf in self.leaves:
             tails = self.values[self.first[stream] : self.end[stream]]
@@ -102,7 +122,7 @@ class Half:
             total += int((stop - start).sum()) + len(tails) * int(wrapped.sum())
         return total
 
-    def words_at(self, places: Iterable[tuple[int, int]]) -> dict[tuple[int, int], int]:
+    def words_at(self, places: Collection[tuple[int, int]]) -> dict[tuple[int, int], int]:
         """Return the word of the sum base[s] + values[p] for each given (stream s, place p), bit j for step j.
 
         The lists that are needed are made again, unsorted, about 0.1 s for each million of values.

@@ -1,12 +1,14 @@
-"""Compiled loops of the bucket join. Every constant of unsigned code is unsigned: numba makes int64 with uint64 a float.
+"""Compiled loops of the bucket join.
 
 The circle of residues modulo 2^64 is cut into buckets of ``width`` residues. In a bucket both halves are written out as
 distances v from its lower end, less than ``width``; distances from −slack to −1 are those carried from the bucket
-before. Arrays ``base``, ``first``, ``end``, ``values`` are those of a `Half`; ``at`` holds the place of every stream.
+before. ``streams`` are the arrays base, first, end and values of a `Half` and the place where each stream stands.
+
+Every constant of unsigned code is unsigned, since numba makes a float of int64 with uint64.
 """
 
-# mypy: disable-error-code="no-untyped-def,misc,no-any-return,untyped-decorator"
-# ruff: noqa: ANN001, ANN201, ANN202 - numba infers the types
+# mypy: disable-error-code="no-untyped-def,misc,no-any-return,untyped-decorator,call-arg,assignment"
+# ruff: noqa: ANN001, ANN202 - numba infers the types
 
 from __future__ import annotations
 
@@ -19,11 +21,11 @@ from solverkit.engines._matching_halves import PAD
 
 __all__ = [
     "BUCKETS",
+    "CROWDED",
     "DONE",
     "EMITTED_LEFT",
     "EMITTED_RIGHT",
     "FULL",
-    "CROWDED",
     "POOLED_LEFT",
     "POOLED_RIGHT",
     "STATE",
@@ -48,7 +50,7 @@ _HASH, _REHASH = np.uint64(0x9E3779B97F4A7C15), np.uint64(0xBB67AE8584CAA73B)
 
 
 @intrinsic
-def _fetch(typingctx, array, place):  # noqa: ARG001 - numba's protocol
+def _fetch(_typing, array, place):
     """Ask for the cache line of ``array[place]``; a place past the end is harmless."""
 
     def generate(context, builder, signature, arguments):
@@ -64,8 +66,9 @@ def _fetch(typingctx, array, place):  # noqa: ARG001 - numba's protocol
 
 
 @njit(cache=True, nogil=True)
-def _seek(base, first, end, values, at, origin):
+def _seek(streams, origin):
     """Set every stream to its first sum at or after ``origin``, going round the circle."""
+    base, first, end, values, at = streams
     for i in range(base.size):
         low, high, wanted = first[i], end[i], origin - base[i]
         while low < high:
@@ -78,11 +81,13 @@ def _seek(base, first, end, values, at, origin):
 
 
 @njit(cache=True, nogil=True)
-def _emit(base, first, end, values, at, origin, width, slack, buffer, filled, carry, carried):
-    """Append the distances of all sums in the bucket to ``buffer``, and what the next bucket needs to ``carry``.
+def _emit(streams, origin, width, slack, buffer, filled, carry):
+    """Append the distances of all sums in the bucket to ``buffer``, and write what the next bucket needs to ``carry``.
 
-    Returns the new lengths of both, or (−1, −1) when one of them is too small.
+    Returns the new length of the one and that of the other, or (−1, −1) when one of them is too small.
     """
+    base, first, end, values, at = streams
+    carried = 0
     room = buffer.size - PAD
     edge = width - slack
     for i in range(base.size):
@@ -190,13 +195,12 @@ def _thin(buffer, filled, others, number, slack, shift, multiplier, top, table):
 
 
 @njit(cache=True, nogil=True)
-def _locate(
-    base, first, end, values, at, origin, width, slack, buffer, filled, top, table, pool, places, pooled
-):  # fmt: skip
+def _locate(streams, origin, width, slack, buffer, filled, top, table, pool, places, pooled):
     """Append the residue, the stream and the place of the distances in ``buffer``, and of a few others, to the pool.
 
     Walks back from where the streams stand after the bucket. Returns the new length of the pool, −1 when it is full.
     """
+    base, first, end, values, at = streams
     table[:] = _ZERO
     for i in range(filled):
         spot = (buffer[i] * _HASH) >> top
@@ -220,46 +224,38 @@ def _locate(
 
 
 @njit(cache=True, nogil=True)
-def restart(base, first, end, values, at, origin, slack, buffer, carry):
-    """Set the streams to ``origin`` and carry what lies less than ``slack`` before it; return how many, −1 if too many."""
-    _seek(base, first, end, values, at, origin - slack)
-    _, carried = _emit(base, first, end, values, at, origin - slack, slack, slack, buffer, 0, carry, 0)
+def restart(streams, origin, slack, buffer, carry):
+    """Set the streams to ``origin`` and carry the sums up to ``slack`` before it; return how many, −1 if too many."""
+    _seek(streams, origin - slack)
+    _, carried = _emit(streams, origin - slack, slack, slack, buffer, 0, carry)
     return carried
 
 
 @njit(cache=True, nogil=True)
-def join(
-    left_base, left_first, left_end, left_values, left_at, left, left_carry, left_pool, left_places,
-    right_base, right_first, right_end, right_values, right_at, right, right_carry, right_pool, right_places,
-    origin, width, buckets, slack, shift, fine, cells, table, state,
-):  # fmt: skip
+def join(left_side, right_side, origin, width, buckets, slack, shift, fine, cells, table, state):
     """Join ``buckets`` buckets from ``origin`` on; what may have a partner is appended to the pools, as residues.
 
-    Returns DONE, FULL or CROWDED. ``state`` then tells how far it came: a bucket that was not finished has left no trace
-    in it, but has moved the streams.
+    A side is (streams, buffer, carry, pool, places). Returns DONE, FULL or CROWDED; ``state`` tells how far it came. A
+    bucket that was not finished has left no trace there, but has moved the streams.
     """
+    left_streams, left, left_carry, left_pool, left_places = left_side
+    right_streams, right, right_carry, right_pool, right_places = right_side
     top = np.uint64(64 - 6)
     size = table.size
     while size > 1:
         size >>= 1
         top -= _ONE
     for _ in range(buckets):
-        filled = state[_CARRIED_LEFT]
-        left[:filled] = left_carry[:filled]
-        count, left_carried = _emit(
-            left_base, left_first, left_end, left_values, left_at, origin, width, slack, left, filled, left_carry, 0
-        )  # fmt: skip
-        more = state[_CARRIED_RIGHT]
-        right[:more] = right_carry[:more]
-        number, right_carried = _emit(
-            right_base, right_first, right_end, right_values, right_at, origin, width, slack, right, more, right_carry, 0
-        )  # fmt: skip
-        if count < 0 or number < 0:
+        left_before, right_before = state[_CARRIED_LEFT], state[_CARRIED_RIGHT]
+        left[:left_before] = left_carry[:left_before]
+        right[:right_before] = right_carry[:right_before]
+        left_filled, left_carried = _emit(left_streams, origin, width, slack, left, left_before, left_carry)
+        right_filled, right_carried = _emit(right_streams, origin, width, slack, right, right_before, right_carry)
+        if left_filled < 0 or right_filled < 0:
             return FULL
-        emitted_left, emitted_right = count - filled, number - more
         cells[:] = _ZERO
-        _mark(left, count, slack, shift, cells)
-        number = _probe(right, number, shift, cells)
+        _mark(left, left_filled, slack, shift, cells)
+        count, number = left_filled, _probe(right, right_filled, shift, cells)
         multiplier = _HASH
         for turn in range(4):
             if count == 0 or number == 0:
@@ -271,20 +267,19 @@ def join(
             multiplier *= _REHASH
         if count and number:
             pooled_left = _locate(
-                left_base, left_first, left_end, left_values, left_at, origin, width, slack, left, count, top, table,
+                left_streams, origin, width, slack, left, count, top, table,
                 left_pool, left_places, state[POOLED_LEFT],
             )  # fmt: skip
             pooled_right = _locate(
-                right_base, right_first, right_end, right_values, right_at, origin, width, slack, right, number, top,
-                table, right_pool, right_places, state[POOLED_RIGHT],
+                right_streams, origin, width, slack, right, number, top, table,
+                right_pool, right_places, state[POOLED_RIGHT],
             )  # fmt: skip
             if pooled_left < 0 or pooled_right < 0:
                 return CROWDED
             state[POOLED_LEFT], state[POOLED_RIGHT] = pooled_left, pooled_right
-        state[EMITTED_LEFT] += emitted_left
-        state[EMITTED_RIGHT] += emitted_right
-        state[_CARRIED_LEFT] = left_carried
-        state[_CARRIED_RIGHT] = right_carried
+        state[EMITTED_LEFT] += left_filled - left_before
+        state[EMITTED_RIGHT] += right_filled - right_before
+        state[_CARRIED_LEFT], state[_CARRIED_RIGHT] = left_carried, right_carried
         state[BUCKETS] += 1
         origin += width
     return DONE

@@ -15,7 +15,7 @@ __all__ = ["near_pairs"]
 def near_pairs(
     left: npt.NDArray[np.uint64], right: npt.NDArray[np.uint64], distance: int, most: int
 ) -> npt.NDArray[np.int64] | None:
-    """Return the places (i, j) of all pairs at most ``distance`` apart on the circle modulo 2^64; None when over ``most``.
+    """Return the places (i, j) of all pairs at most ``distance`` apart modulo 2^64; None when over ``most``.
 
     Args:
         left: in any order, with repeats.

@@ -63,8 +63,6 @@ def best_split(length: int, odd: int) -> Split:
     Split(length=72, odd=45, left_length=36, left_odd=22)
     """
     candidates = [
-        Split(length, odd, m, c)
-        for m in range(1, length)
-        for c in {m * odd // length, -(-m * odd // length) - 1}
+        Split(length, odd, m, c) for m in range(1, length) for c in {m * odd // length, -(-m * odd // length) - 1}
     ]
     return min(candidates, key=lambda s: (s.elements, abs(2 * s.left_length - length), s.left_length, s.left_odd))

@@ -56,7 +56,7 @@ def _drain_broad(ids, lows, highs, c, left, table, bias, floor_high, limit, pass
                 nf += _ONE
             return _ZERO, nf
         for i in range(c, (c + _U(7)) // _LANES * _LANES):
-            highs[i] = _TOP
+            lows[i], highs[i] = _ZERO, _TOP
         i, k = _ZERO, _ZERO
         while i < c:
             over = upper_over(highs_at, i, limit)

@@ -114,7 +114,7 @@ def _parts(
         return [(0, tables.classes, with_ledger)]
     table, bias = small
     narrow_limit, broad_limit = (((1 << bits) // multiplier**12) << 12 for bits in (62, 61))
-    one = (signed, _U(bias), _U(floor), _U(narrow_limit), _U(broad_limit), _PASSES)
+    one = (signed, _U(bias), _U(min(floor, 1 << 62)), _U(narrow_limit), _U(broad_limit), _PASSES)
     two = (signed, _U(bias), _U(floor >> 32), _U(0), _U(broad_limit), _PASSES)
 
     def narrow(place: int, stop: int) -> tuple[int, ...]:

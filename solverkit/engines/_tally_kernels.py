@@ -1,4 +1,4 @@
-# ruff: noqa: ANN001, ANN202, PLR0917 - numba infers the types; its arguments are positional
+# ruff: noqa: ANN001, ANN202 - numba infers the types
 # mypy: disable-error-code="no-untyped-def,misc,no-any-return,untyped-decorator"
 """Compiled loops of the count: add a shifted row, carry between digits, multiply two rows.
 

@@ -9,7 +9,7 @@ from functools import lru_cache
 from math import ceil, gcd, inf
 from typing import TYPE_CHECKING
 
-from solverkit.engines._census_cycles import Shape, wanted_cycles
+from solverkit.engines._census_cycles import Frame, wanted_cycles
 from solverkit.engines._census_scan import Share
 from solverkit.errors import CapacityError
 from solverkit.methods import Family, Hit, Piece, PieceResult
@@ -21,12 +21,12 @@ if TYPE_CHECKING:
     from solverkit.methods import Budget
     from solverkit.window import Cell
 
-__all__ = ["ENGINE", "Census", "PrimitiveCycle", "offset_counts", "primitive_cycles"]
+__all__ = ["ENGINE", "Census", "PrimitiveCycle", "Share", "offset_counts", "primitive_cycles"]
 
 _LONGEST = 60_000
 _MOST_PIECES = 1000
 _HIT_BYTES = 300
-#: Shapes with at most this many words are kept for other offsets: 32 of them at most, 20 MiB each.
+#: Frames with at most this many words are kept for other offsets: 32 of them at most, 20 MiB each.
 _KEPT_WORDS = 1 << 17
 
 # Measured on one core; seconds.
@@ -58,6 +58,7 @@ def primitive_cycles(
     lengths: Iterable[int],
     odd: Iterable[int] | None = None,
     offsets_at_most: int | None = None,
+    share: Share | None = None,
 ) -> Iterator[PrimitiveCycle]:
     """Yield every primitive cycle of positive elements of these lengths, for all offsets at once.
 
@@ -66,6 +67,7 @@ def primitive_cycles(
         lengths: the lengths k, such as ``Span(1, 30)``.
         odd: the odd counts x, or None for all.
         offsets_at_most: largest |d|, or None for every offset.
+        share: part i of n for one of n workers, or None for all; the parts are disjoint.
 
     Reflection gives the cycles of negative elements. The cycles come by length, odd count, and Lyndon word,
     in bounded memory. Cost: about 20 ns a Lyndon word, 1 µs a cycle.
@@ -78,13 +80,13 @@ def primitive_cycles(
         for ones in range(1, length + 1) if counts is None else counts:
             if 1 <= ones <= length:
                 sign = 1 if 2**length > multiplier**ones else -1
-                for found in wanted_cycles(Shape(multiplier, length, ones), at_most=offsets_at_most):
+                for found in wanted_cycles(Frame(multiplier, length, ones), at_most=offsets_at_most, share=share):
                     for offset, least in zip(found.offsets, found.least, strict=True):
                         yield PrimitiveCycle(sign * offset, least, length, ones)
 
 
 def offset_counts(multiplier: int, length: int, odd: int, offsets_at_most: int | None = None) -> dict[int, int]:
-    """Return for each offset how many primitive cycles of positive elements it has in one shape.
+    """Return for each offset how many primitive cycles of positive elements it has with given length and odd count.
 
     Args:
         multiplier: q.
@@ -97,15 +99,15 @@ def offset_counts(multiplier: int, length: int, odd: int, offsets_at_most: int |
     """
     sign = 1 if 2**length > multiplier**odd else -1
     counts: Counter[int] = Counter()
-    for found in wanted_cycles(Shape(multiplier, length, odd), at_most=offsets_at_most):
+    for found in wanted_cycles(Frame(multiplier, length, odd), at_most=offsets_at_most):
         counts.update(found.offsets)
     return {sign * offset: counts[offset] for offset in sorted(counts)}
 
 
 @lru_cache(maxsize=32)
-def _kept(shape: Shape) -> tuple[tuple[int, int], ...]:
-    """Return (|d|, least element) of every primitive cycle of this shape."""
-    return tuple(pair for found in wanted_cycles(shape) for pair in zip(found.offsets, found.least, strict=True))
+def _kept(frame: Frame) -> tuple[tuple[int, int], ...]:
+    """Return (|d|, least element) of every primitive cycle of this frame."""
+    return tuple(pair for found in wanted_cycles(frame) for pair in zip(found.offsets, found.least, strict=True))
 
 
 def _expected(cell: Cell) -> int:
@@ -150,8 +152,8 @@ class Census:
             return inf
         if (cell.determinant > 0) != (cell.offset > 0):
             return 0.0
-        shape = Shape(cell.multiplier, cell.length, cell.odd)
-        check = _CHECK if shape.fits_word() else _CHECK_WIDE
+        frame = Frame(cell.multiplier, cell.length, cell.odd)
+        check = _CHECK if frame.fits_word() else _CHECK_WIDE
         return _START + _VISIT * lyndon_count(cell.length, cell.odd) + check * (1 + _expected(cell))
 
     def batches(self, cells: Sequence[Cell]) -> list[tuple[Cell, ...]]:
@@ -189,12 +191,12 @@ def _cycles(cell: Cell, share: Share, deadline: float | None) -> Iterator[list[i
     """Yield the least elements of the cycles of ``cell`` in this share, block by block."""
     if (cell.determinant > 0) != (cell.offset > 0):
         return
-    shape = Shape(cell.multiplier, cell.length, cell.odd)
+    frame = Frame(cell.multiplier, cell.length, cell.odd)
     common, size = gcd(cell.determinant, cell.offset), abs(cell.offset)
-    if share.count == 1 and shape.fits_word() and lyndon_count(cell.length, cell.odd) <= _KEPT_WORDS:
-        yield [size // offset * n for offset, n in _kept(shape) if common % offset == 0]
+    if share.count == 1 and frame.fits_word() and lyndon_count(cell.length, cell.odd) <= _KEPT_WORDS:
+        yield [size // offset * n for offset, n in _kept(frame) if common % offset == 0]
         return
-    for found in wanted_cycles(shape, dividing=common, share=share, deadline=deadline):
+    for found in wanted_cycles(frame, dividing=common, share=share, deadline=deadline):
         yield [size // offset * n for offset, n in zip(found.offsets, found.least, strict=True)]
 
 

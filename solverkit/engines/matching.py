@@ -26,7 +26,11 @@ from solverkit.methods import Budget, Family, Hit, Piece, PieceResult
 if TYPE_CHECKING:
     from collections.abc import Iterable, Sequence
 
+    import numpy as np
+    import numpy.typing as npt
+
     from solverkit.engines._matching_halves import Half
+    from solverkit.engines._matching_split import Split
     from solverkit.window import Cell
 
 __all__ = ["ENGINE", "Matching"]
@@ -117,37 +121,35 @@ def _match(cell: Cell, chosen: Plan, piece: Piece, memory: int, found: _Found, d
     from solverkit.engines._matching_fractions import slack  # noqa: PLC0415
     from solverkit.engines._matching_pairs import near_pairs  # noqa: PLC0415
 
-    left, right = _halves(cell, chosen, chosen.most_tails(memory))
+    split = chosen.split
+    assert split is not None
+    left, right = _halves(cell, split, chosen.most_tails(memory))
+    found.statistics["streams"] = len(left.base) + len(right.base)
     if chosen.way is Way.SORTED:
-        compared, places = (left.count(), right.count()), None
-        # One stream each.
-        ys, zs = (half.values[: half.count()] + half.base for half in (left, right))
+        ys, zs, compared = left.whole(), right.whole(), (left.count(), right.count())
     else:
         low, high = (CIRCLE * (piece.index + i) // piece.count for i in (0, 1))
-        joined = join_range(left, right, low, high, slack(cell.odd), 4 * _MOST_PROPOSALS, deadline)
+        joined = join_range(left, right, low, high, slack(cell.odd), _MOST_PROPOSALS, deadline)
         ys, zs, compared, found.reason = joined.left, joined.right, joined.emitted, joined.reason
-        places = joined.left_places, joined.right_places
         found.statistics["buckets"] = joined.buckets
-    pairs = near_pairs(ys, zs, slack(cell.odd), _MOST_PROPOSALS)
-    found.statistics.update(left=compared[0], right=compared[1], streams=len(left.base) + len(right.base))
+    found.statistics.update(left=compared[0], right=compared[1])
+    pairs = near_pairs(ys.residues, zs.residues, slack(cell.odd), _MOST_PROPOSALS)
     if pairs is None:
         found.reason = f"more than {_MOST_PROPOSALS} pairs of sums match"
         return
-    i, j = pairs[:, 0], pairs[:, 1]
-    ends = [
-        list(map(tuple, (np.stack([np.zeros_like(of), of], axis=1) if places is None else places[side][of]).tolist()))
-        for side, of in enumerate((i, j))
-    ]
-    _substitute(cell, _proposed(ends, left, right, chosen), found, deadline)
+    found.statistics["pairs"] = len(pairs)
+    heads = left.words_at(firsts := _pairs_of(ys.places[pairs[:, 0]]))
+    tails = right.words_at(seconds := _pairs_of(zs.places[pairs[:, 1]]))
+    middle = 1 << split.left_length
+    words = {heads[one] | middle | tails[other] for one, other in zip(firsts, seconds, strict=True)}
+    _substitute(cell, sorted(words), found, deadline)
 
 
-def _halves(cell: Cell, chosen: Plan, most: int) -> tuple[Half, Half]:
-    """Return the sums y of the words 0A and the negated sums z of the words 1B: sought are y and z that nearly agree."""
+def _halves(cell: Cell, split: Split, most: int) -> tuple[Half, Half]:
+    """Return the sums y of the words 0A and the negated sums z of the words 1B; sought are y and z that nearly agree."""
     from solverkit.engines._matching_fractions import fractions  # noqa: PLC0415
     from solverkit.engines._matching_halves import HalfWords, build  # noqa: PLC0415
 
-    split = chosen.split
-    assert split is not None
     m, c = split.left_length, split.left_odd
     weights = fractions(cell)
     negated = -weights
@@ -157,15 +159,8 @@ def _halves(cell: Cell, chosen: Plan, most: int) -> tuple[Half, Half]:
     )
 
 
-def _proposed(pairs: set[tuple[int, int]], left: Half, right: Half, chosen: Plan) -> Iterable[int]:
-    """Yield the words of the pairs of sums."""
-    assert chosen.split is not None
-    middle = 1 << chosen.split.left_length
-    lefts, rights = left.words_of(y for y, _ in pairs), right.words_of(z for _, z in pairs)
-    for y, z in sorted(pairs):
-        for head in lefts[y]:
-            for tail in rights[z]:
-                yield head | middle | tail
+def _pairs_of(places: npt.NDArray[np.int64]) -> list[tuple[int, int]]:
+    return [(stream, place) for stream, place in places.tolist()]
 
 
 def _substitute(cell: Cell, words: Iterable[int], found: _Found, deadline: float) -> None:

@@ -12,7 +12,7 @@ import pytest
 from solverkit.engines import _census_cycles as cycles
 from solverkit.engines import _census_scan as scan
 from solverkit.engines import census
-from solverkit.engines._census_cycles import Shape, smooth_part, wanted_cycles
+from solverkit.engines._census_cycles import Frame, smooth_part, wanted_cycles
 from solverkit.engines._census_scan import Share, rare_weights, screened_words
 from solverkit.engines.census import ENGINE, Census, offset_counts, primitive_cycles
 from solverkit.errors import CapacityError
@@ -297,27 +297,27 @@ class TestScan:
 
 class TestCheck:
     @pytest.mark.parametrize(
-        "shape",
+        "frame",
         [
-            Shape(3, 14, 8),
-            Shape(3, 13, 5),
-            Shape(5, 12, 7),
-            Shape(15, 11, 4),
-            Shape(181, 9, 5),
-            Shape(3, 38, 36),
+            Frame(3, 14, 8),
+            Frame(3, 13, 5),
+            Frame(5, 12, 7),
+            Frame(15, 11, 4),
+            Frame(181, 9, 5),
+            Frame(3, 38, 36),
         ],
         ids=str,
     )
     @pytest.mark.parametrize("at_most", [1, 100, 10**9])
-    def test_compiled_and_plain_agree(self, shape, at_most):
-        assert shape.fits_word()
-        for block in screened_words(shape.multiplier, shape.length, shape.odd):
-            compiled = cycles._check_compiled(shape, block, None, at_most)
-            assert compiled == cycles._check_plain(shape, block, None, at_most)
+    def test_compiled_and_plain_agree(self, frame, at_most):
+        assert frame.fits_word()
+        for block in screened_words(frame.multiplier, frame.length, frame.odd):
+            compiled = cycles._check_compiled(frame, block, None, at_most)
+            assert compiled == cycles._check_plain(frame, block, None, at_most)
 
     def test_compiled_is_used_up_to_63_bits_and_no_further(self):
         """q·β + |D| of (3, 39, x) passes 2^63 between x = 36 and x = 39."""
-        fits = [Shape(3, 39, odd).fits_word() for odd in range(34, 40)]
+        fits = [Frame(3, 39, odd).fits_word() for odd in range(34, 40)]
         assert fits == sorted(fits, reverse=True)
         assert fits[0]
         assert not fits[-1]
@@ -396,6 +396,11 @@ class TestPrimitiveCycles:
             cut = list(primitive_cycles(multiplier, range(1, 15), offsets_at_most=most))
             assert sorted(cut) == sorted(row for row in everything if abs(row.offset) <= most)
 
+    def test_of_all_shares_are_all(self):
+        shares = [primitive_cycles(3, range(1, 15), None, 1000, Share(i, 3)) for i in range(3)]
+        whole = list(primitive_cycles(3, range(1, 15), None, 1000))
+        assert sorted(row for rows in shares for row in rows) == sorted(whole)
+
     def test_can_be_limited_to_some_odd_counts(self):
         rows = list(primitive_cycles(3, [8, 11], [5, 7, 9]))
         assert {(row.length, row.odd) for row in rows} == {(8, 5), (8, 7), (11, 5), (11, 7), (11, 9)}
@@ -457,9 +462,9 @@ class TestMethod:
 
     def test_wide_numbers_are_checked_with_python_integers(self):
         """181·β passes 2^63 for length 14 with 8 odd steps."""
-        shape = Shape(181, 14, 8)
-        assert not shape.fits_word()
-        determinant = shape.determinant
+        frame = Frame(181, 14, 8)
+        assert not frame.fits_word()
+        determinant = frame.determinant
         assert len(run(Cell(181, determinant, 14, 8)).least) == lyndon_count(14, 8)
 
     @pytest.mark.parametrize(
@@ -502,7 +507,7 @@ class TestMethod:
         assert ENGINE.run(piece, Budget()).hits == (Hit(5, 3, 23),)
 
 
-def test_offsets_of_a_shape_multiply_to_the_imprimitive_cycles():
+def test_offsets_of_a_frame_multiply_to_the_imprimitive_cycles():
     """The cycles of an offset are the primitive ones of its divisors; (3, 8, 4) has D = 175."""
     primitive = offset_counts(3, 8, 4)
     for offset in (1, 5, 7, 25, 35, 175):
@@ -514,4 +519,4 @@ def test_a_wrong_number_of_visited_words_is_noticed(monkeypatch):
     block = scan.Block(np.zeros((0, 3), np.uint16), 0, 1, 4)
     monkeypatch.setattr(cycles, "screened_words", lambda *_, **__: iter([block]))
     with pytest.raises(Exception, match="visited 4 words, not all 7"):
-        list(wanted_cycles(Shape(3, 8, 3)))
+        list(wanted_cycles(Frame(3, 8, 3)))

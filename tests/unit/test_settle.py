@@ -1,0 +1,308 @@
+"""Choice of methods, execution, verdicts."""
+
+import json
+import multiprocessing
+import os
+import signal
+import subprocess
+import sys
+import time
+from concurrent.futures.process import BrokenProcessPool
+from dataclasses import replace
+
+import pytest
+
+from solverkit.errors import InputError
+from solverkit.findings import Evidence, Verdict
+from solverkit.maps import Map
+from solverkit.methods import Budget, Listing, Piece, PieceResult
+from solverkit.numerals import Span
+from solverkit.settle import choice, pool
+from solverkit.settle import run as settle_run
+from solverkit.settle.choice import method_named, plan
+from solverkit.settle.pool import Order, SerialExecutor, run_orders
+from solverkit.settle.run import Settings, settle
+from solverkit.settle.triage import Criterion, triage
+from solverkit.settle.verdicts import conclude, lists_by_cell
+from solverkit.window import Cell, Sign, Window
+from tests.reference import cycles_by_iteration
+
+BOTH = (Sign.POSITIVE, Sign.NEGATIVE)
+
+
+def _triple(settlement):
+    return [(c.least, c.length, c.gcd) for c in settlement.cycles]
+
+
+class TestTriage:
+    def test_reasons_and_live_cells_add_up_to_the_window(self):
+        for window in (
+            Window((Map(3, 1),), Span(1, 40), signs=BOTH),
+            Window((Map(5, 35), Map(3, -7)), Span(3, 25), Span(2, 9), above=4, primitive=True, signs=BOTH),
+        ):
+            for criterion in Criterion:
+                told = triage(window, criterion)
+                assert sum(told.excluded.values()) + told.live == told.total
+
+    def test_the_balanced_bound_never_keeps_more(self):
+        window = Window((Map(3, 29), Map(7, -5)), Span(1, 60))
+        sharp, plain = triage(window), triage(window, Criterion.PRODUCT)
+        kept = {live.cell for live in sharp.cells}
+        assert kept < {live.cell for live in plain.cells}
+
+    def test_a_side_with_too_many_cells_is_counted_only(self):
+        window = Window((Map(3, -1),), Span(1, 60))
+        listed = triage(window, Criterion.PRODUCT)
+        counted = triage(window, Criterion.PRODUCT, list_limit=100)
+        assert counted.cells == ()
+        (region,) = counted.regions
+        assert region.count == listed.live + listed.excluded["words"]
+        assert counted.first_live() == listed.first_live() == (1, 1)
+
+    def test_primitive_windows_leave_out_cells_that_only_have_multiples(self):
+        window = Window((Map(3, 5),), Span(2, 2), primitive=True)
+        assert triage(window).excluded["imprimitive"] == 1
+        assert triage(replace(window, primitive=False)).live == 1
+
+
+class TestChoice:
+    def test_unknown_methods_are_named(self):
+        for name in ("sewep", "cnf:", "cnf:none", "cnf@", "cnf:orbit@nosuch", ""):
+            with pytest.raises(InputError):
+                method_named(name)
+
+    def test_names_of_pairs_are_completed(self):
+        assert method_named("cnf").name == "cnf:orbit@cadical195"
+        assert method_named("cnf@glucose4").name == "cnf:orbit@glucose4"
+
+    def test_every_cell_gets_two_families(self):
+        cells = [live.reduction.cell for live in triage(Window((Map(3, 13),), Span(1, 30))).cells]
+        chosen = plan(cells, {}, frozenset())
+        families = {cell: set() for cell in cells}
+        for batch in chosen.batches:
+            for cell in batch.cells:
+                families[cell].add(method_named(batch.method).family)
+        assert all(len(kinds) == 2 for kinds in families.values())
+        assert not chosen.refused
+
+    def test_computed_evidence_needs_one_method(self):
+        cells = [Cell(3, 1, 27, 17), Cell(3, 1, 2, 1)]
+        chosen = plan(cells, {}, frozenset(), evidence=Evidence.COMPUTED)
+        assert sorted(cell for batch in chosen.batches for cell in batch.cells) == sorted(cells)
+
+    def test_what_failed_is_replaced_by_another_method(self):
+        cell = Cell(3, 1, 27, 17)
+        first = plan([cell], {}, frozenset(), evidence=Evidence.COMPUTED).batches[0].method
+        second = plan([cell], {}, frozenset({(first, cell)}), evidence=Evidence.COMPUTED).batches[0].method
+        assert first != second
+
+    def test_a_cell_that_no_method_takes_is_refused_with_all_reasons(self):
+        vast = Cell(3, 1, 114208327604, 72057431991, above=2**68)
+        told = plan([vast], {}, frozenset()).refused[vast]
+        assert "sweep: " in told
+        assert "cnf:orbit@cadical195: " in told
+
+
+class TestVerdicts:
+    CELL = Cell(3, 13, 8, 5)
+    ALL = (211, 227, 251, 259, 283, 287, 319)
+
+    def _finding(self, *entries, above=0, primitive=False):
+        window = Window((Map(3, 13),), Span(8, 8), Span(5, 5), above=above, primitive=primitive)
+        (live,) = triage(window).cells
+        return conclude(window, live, lists_by_cell(entries), {})
+
+    def test_two_families_confirm(self):
+        found = self._finding(Listing(self.CELL, "sweep", self.ALL, True), Listing(self.CELL, "cnf:orbit@cadical195", self.ALL, True))
+        assert (found.verdict, found.evidence, len(found.cycles)) == (Verdict.FOUND, Evidence.CONFIRMED, 7)
+
+    def test_two_methods_of_one_family_do_not(self):
+        found = self._finding(Listing(self.CELL, "matching", self.ALL, True), Listing(self.CELL, "census", self.ALL, True))
+        assert found.evidence is Evidence.COMPUTED
+
+    def test_different_lists_contradict_and_both_are_kept(self):
+        found = self._finding(Listing(self.CELL, "sweep", self.ALL[:-1], True), Listing(self.CELL, "matching", self.ALL[1:], True))
+        assert found.contradiction
+        assert found.verdict is Verdict.OPEN
+        assert [c.least for c in found.cycles] == list(self.ALL)
+
+    def test_an_incomplete_list_leaves_the_cell_open_with_its_cycles(self):
+        found = self._finding(Listing(self.CELL, "sweep", self.ALL[:2], False, "out of time"))
+        assert (found.verdict, len(found.cycles), found.reason) == (Verdict.OPEN, 2, "sweep: out of time")
+
+    def test_a_count_must_agree_with_a_list(self):
+        count = Listing(self.CELL, "tally", self.ALL[:2], True, total=7)
+        agreed = self._finding(Listing(self.CELL, "sweep", self.ALL, True), count)
+        assert (agreed.evidence, agreed.total, len(agreed.cycles)) == (Evidence.CONFIRMED, None, 7)
+        assert self._finding(Listing(self.CELL, "sweep", self.ALL, True), replace(count, total=8)).contradiction
+        alone = self._finding(count)
+        assert (alone.verdict, alone.total, len(alone.cycles)) == (Verdict.FOUND, 7, 2)
+
+    def test_a_list_with_a_smaller_bound_serves_a_larger_one(self):
+        found = self._finding(Listing(self.CELL, "sweep", self.ALL, True), above=260)
+        assert [c.least for c in found.cycles] == [283, 287, 319]
+
+
+def test_windows_settle_to_what_iteration_finds(tmp_path):
+    """Against plain iteration from every start up to the largest bound of any cell."""
+    for map_ in (Map(3, 7), Map(3, -11), Map(5, 3), Map(7, -1)):
+        settlement = settle(Window((map_,), Span(1, 14)), tmp_path / str(map_.offset), Settings(jobs=1))
+        assert settlement.complete
+        top = max(live.bound for live in settlement.triage.cells)
+        expected = cycles_by_iteration(map_.multiplier, map_.offset, top, 14)
+        assert {(c.least, c.length, c.odd) for c in settlement.cycles} == expected
+
+
+def test_settled_windows_are_not_computed_again(tmp_path, monkeypatch):
+    window = Window((Map(3, 5),), Span(1, 12))
+    first = settle(window, tmp_path / "d", Settings(jobs=1))
+
+    def refuse(*_):
+        raise AssertionError("work was done again")
+
+    monkeypatch.setattr(settle_run, "run_orders", refuse)
+    again = settle(window, tmp_path / "d")
+    assert _triple(again) == _triple(first)
+    assert [replace(f, seconds=0) for f in again.findings] == [replace(f, seconds=0) for f in first.findings]
+
+
+def test_evidence_asked_for_and_not_reached_shows_in_the_exit_status(tmp_path):
+    window = Window((Map(3, 5),), Span(1, 8))
+    assert settle(window, tmp_path / "a", Settings(Evidence.CONFIRMED, jobs=1)).exit_status == 0
+    one = settle(window, tmp_path / "b", Settings(Evidence.CONFIRMED, ("sweep",), jobs=1))
+    assert one.complete
+    assert one.exit_status == 3
+    assert settle(window, tmp_path / "c", Settings(methods=("sweep",), jobs=1)).exit_status == 0
+
+
+def test_a_time_limit_leaves_cells_open_and_a_later_run_settles_them(tmp_path):
+    window = Window((Map(3, -3191),), Span(45, 45), Span(29, 29))
+    only = ("cnf:orbit@cadical195",)
+    short = settle(window, tmp_path / "d", Settings(methods=only, budget=0.02, jobs=1))
+    assert short.exit_status == 3
+    assert "no answer within" in short.open_cells[0].reason
+    later = settle(window, tmp_path / "d", Settings(methods=only, jobs=1))
+    assert (later.exit_status, later.cycles) == (0, ())
+
+
+class _Liar:
+    """A method that leaves one cycle out."""
+
+    name = "liar"
+
+    def __init__(self):
+        self.family = method_named("cnf").family
+
+    def refusal(self, cell):
+        return None
+
+    def estimate(self, cells):
+        return 0.0
+
+    def batches(self, cells):
+        return [tuple(cells)]
+
+    def pieces(self, batch, seconds):
+        return [Piece(self.name, batch)]
+
+    def run(self, piece, budget):
+        return PieceResult(piece, ())
+
+
+def test_contradictory_methods_end_with_status_5_and_keep_both(tmp_path, monkeypatch):
+    real = choice.method_named
+    liar = _Liar()
+
+    def named(name):
+        return liar if name == "liar" else real(name)
+
+    for module in (choice, settle_run, pool, sys.modules["solverkit.settle.verdicts"]):
+        monkeypatch.setattr(module, "method_named", named)
+    told = settle(Window((Map(3, 5),), Span(5, 5)), tmp_path / "d", Settings(methods=("sweep", "liar"), jobs=1))
+    assert told.exit_status == 5
+    assert [c.least for c in told.contradictions[0].cycles] == [19, 23]
+    assert "liar lists 0" in told.contradictions[0].reason
+
+
+class _Dying(SerialExecutor):
+    """An executor whose worker dies over the first orders."""
+
+    deaths = 0
+
+    def submit(self, fn, /, *args, **kwargs):
+        if _Dying.deaths:
+            _Dying.deaths -= 1
+            from concurrent.futures import Future
+
+            future = Future()
+            future.set_exception(BrokenProcessPool("a worker died"))
+            return future
+        return super().submit(fn, *args, **kwargs)
+
+
+@pytest.mark.parametrize(("deaths", "complete"), [(0, True), (2, True), (3, False)])
+def test_an_order_whose_worker_dies_runs_again_at_most_three_times(deaths, complete):
+    method = method_named("sweep")
+    (piece,) = method.pieces((Cell(3, -1, 11, 7),), 1.0)
+    _Dying.deaths = deaths
+    (results,) = run_orders([Order(((piece, Budget()),))], _Dying, 2)
+    assert results[0].complete is complete
+    assert complete or "died three times" in results[0].reason
+
+
+RUN = """
+import sys
+from pathlib import Path
+from solverkit.maps import Map
+from solverkit.numerals import Span
+from solverkit.settle.run import Settings, settle
+from solverkit.window import Window
+if __name__ == "__main__":
+    window = Window(tuple(Map(3, d) for d in range(5, 22, 2)), Span(1, 40))
+    settlement = settle(window, Path(sys.argv[1]), Settings(jobs=2))
+    print(settlement.exit_status, [(c.offset, c.least, c.length) for c in settlement.cycles])
+"""
+
+
+@pytest.mark.skipif(not hasattr(os, "killpg"), reason="process groups are a POSIX notion")
+def test_killed_at_any_moment_a_run_goes_on_to_the_same_result(tmp_path):
+    """kill -9 to the whole process group, several times; nothing recorded is lost or computed again."""
+    script = tmp_path / "run.py"
+    script.write_text(RUN)
+
+    def start(folder):
+        return subprocess.Popen(
+            [sys.executable, str(script), str(folder)], stdout=subprocess.PIPE, text=True, start_new_session=True
+        )
+
+    whole = start(tmp_path / "whole").communicate(timeout=120)[0]
+    recorded = []
+    for pause in (1.0, 1.6, 2.2):
+        process = start(tmp_path / "killed")
+        time.sleep(pause)
+        os.killpg(process.pid, signal.SIGKILL)
+        process.communicate()
+        ledger = tmp_path / "killed" / "ledger.sqlite"
+        if ledger.exists():
+            recorded.append(_complete_lists(ledger))
+    assert start(tmp_path / "killed").communicate(timeout=120)[0] == whole
+    assert whole.startswith("0 [(5, 5, 2)")
+    final = _complete_lists(tmp_path / "killed" / "ledger.sqlite")
+    for earlier in recorded:
+        assert earlier.items() <= final.items()
+    assert multiprocessing.active_children() == []
+
+
+def _complete_lists(path):
+    import sqlite3
+
+    connection = sqlite3.connect(path)
+    try:
+        rows = connection.execute(
+            "SELECT method, multiplier, divisor, length, odd, above, least, seconds FROM listing WHERE complete"
+        ).fetchall()
+    except sqlite3.OperationalError:  # killed before the tables were made
+        rows = []
+    finally:
+        connection.close()
+    return {tuple(row[:6]): (json.loads(row[6])[0:], row[7]) for row in rows}
