@@ -147,7 +147,7 @@ class CellFinding:
         verdict: none, found or open.
         cycles: the complete list for ``found``; what is known so far for ``open``; empty for ``none``.
         evidence: None exactly for ``open``.
-        methods: names of the methods whose complete lists agree, in the order they ran.
+        methods: names of the methods whose complete lists agree, sorted.
         seconds: computing time spent on the cell.
         reason: for ``open``, why; else what excluded the cell, or empty.
         total: exact number of cycles when they were counted and ``cycles`` is only a sample, else None.

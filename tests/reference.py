@@ -21,7 +21,7 @@ def cycles_of_cell(q, d, k, x, above=0):
 
 
 def cycles_by_iteration(q, d, top, longest):
-    """(least, length, odd) of the cycles of positive elements met from starts 1 … top, of length at most ``longest``."""
+    """(least, length, odd) of the cycles of positive elements met from starts 1 … top, length at most ``longest``."""
     found = set()
     for start in range(1, top + 1):
         n, seen, limit = start, {}, 1 << 200

@@ -11,14 +11,17 @@ from rich.console import Console
 from rich.markup import escape
 from rich.table import Table
 
+from solverkit.exact.chances import forecast
 from solverkit.exact.cone import ThinCone, tallest
 from solverkit.findings import Evidence, Verdict
 from solverkit.settle.documents import listed_cells
 from solverkit.settle.forecasts import methods_for
+from solverkit.window import Cell
 
 if TYPE_CHECKING:
     from pathlib import Path
 
+    from solverkit.settle.regions import RegionFinding
     from solverkit.settle.run import Settlement
     from solverkit.settle.triage import LiveCell, Triage
     from solverkit.window import Window
@@ -195,18 +198,22 @@ def print_settlement(settlement: Settlement, folder: Path) -> None:
     counted = [f for f in settlement.findings if f.total is not None]
     number = len(cycles) + sum((f.total or 0) - len(f.cycles) for f in counted)
     what = "no cycle" if not number else f"{number:,} cycle{'s' if number != 1 else ''}"
+    open_regions = [r for r in settlement.regions if r.verdict is Verdict.OPEN]
     if settlement.contradictions:
         console.print(
             "[bold red]Two methods contradict each other.[/bold red] Both results are kept; please report this."
         )
-    elif open_cells:
-        console.print(f"[bold yellow]Not settled:[/bold yellow] {what} so far, {len(open_cells)} cells are open.")
+    elif not settlement.complete:
+        count = len(open_cells) + sum(r.region.count for r in open_regions)
+        console.print(f"[bold yellow]Not settled:[/bold yellow] {what} so far, {_number(count)} cells are open.")
     else:
         console.print(f"[bold green]Settled:[/bold green] the window holds {what}.")
     if cycles:
         _print_cycles(settlement, console)
     _exclusions(settlement.triage, console)
     _print_evidence(settlement, console)
+    for region in settlement.regions:
+        _print_region(region, console)
     for finding in (settlement.contradictions or open_cells)[:12]:
         cell = finding.cell
         console.print(
@@ -218,7 +225,7 @@ def print_settlement(settlement: Settlement, folder: Path) -> None:
     console.print(
         f"\nDossier: {escape(str(folder))} ({settlement.seconds:.1f} s; the same command returns at once, or goes on)."
     )
-    if open_cells and not settlement.contradictions:
+    if not settlement.complete and not settlement.contradictions:
         console.print("To go on: the same command with a larger --budget or --limit-memory, or other --methods.")
 
 
@@ -237,11 +244,12 @@ def _print_cycles(settlement: Settlement, console: Console) -> None:
         "word<",
     )
     shown = 0
-    chances = {live.cell: live for live in settlement.triage.cells}
+    by_region = {cycle: region.evidence for region in settlement.regions for cycle in region.cycles}
     findings = {cycle: finding for finding in settlement.findings for cycle in finding.cycles}
     for cycle in settlement.cycles[:200]:
-        finding = findings[cycle]
-        evidence = finding.evidence.word if finding.evidence is not None else "open"
+        finding = findings.get(cycle)
+        level = finding.evidence if finding is not None else by_region[cycle]
+        evidence = level.word if level is not None else "open"
         table.add_row(
             str(cycle.map),
             _number(cycle.least),
@@ -251,7 +259,7 @@ def _print_cycles(settlement: Settlement, console: Console) -> None:
             str(cycle.length + cycle.odd),
             str(cycle.circuits),
             str(cycle.gcd),
-            _share(chances[finding.cell].forecast().chance),
+            _share(forecast(Cell(cycle.multiplier, cycle.offset, cycle.length, cycle.odd)).chance),
             evidence,
             _word(cycle.word),
         )
@@ -259,6 +267,18 @@ def _print_cycles(settlement: Settlement, console: Console) -> None:
     console.print(table)
     if shown < len(settlement.cycles):
         console.print(f"… and {len(settlement.cycles) - shown} more; --format json lists all\n")
+
+
+def _print_region(finding: RegionFinding, console: Console) -> None:
+    side, count = finding.region.side, _number(finding.region.count)
+    name = f"{side.map}, {side.sign.word} elements, {count} live cells together"
+    if finding.verdict is Verdict.OPEN:
+        console.print(f"{name}: [yellow]open[/yellow], {escape(finding.reason)}; swept to {_number(finding.swept_to)}.")
+    else:
+        console.print(
+            f"{name}: {finding.verdict.value}, computed by one sweep of all least elements up to U = "
+            f"{_number(finding.bound)}, which no cell exceeds."
+        )
 
 
 def _print_evidence(settlement: Settlement, console: Console) -> None:

@@ -13,7 +13,7 @@ if TYPE_CHECKING:
 
     from solverkit.window import Cell
 
-__all__ = ["fractions", "modulus", "slack"]
+__all__ = ["fractions", "modulus", "slack", "unit"]
 
 _FULL = (1 << 64) - 1
 
@@ -46,19 +46,20 @@ def fractions(cell: Cell) -> npt.NDArray[np.uint64]:
     """
     size = modulus(cell)
     table = np.zeros((cell.odd, cell.length), np.uint64)
-    unit = _unit(size, f"{cell.multiplier} {cell.offset} {cell.length} {cell.odd}")
+    scale = unit(cell)
     for i in range(cell.odd):
-        weight = pow(cell.multiplier, cell.odd - 1 - i, size) * unit % size
+        weight = pow(cell.multiplier, cell.odd - 1 - i, size) * scale % size
         for j in range(cell.length):
             table[i, j] = (((weight << 65) // size + 1) >> 1) & _FULL
             weight = 2 * weight % size
     return table
 
 
-def _unit(size: int, seed: str) -> int:
-    """Return a unit modulo ``size`` that looks random and depends on nothing but the arguments."""
-    digest = hashlib.shake_256(seed.encode()).digest(size.bit_length() // 8 + 16)
-    unit = int.from_bytes(digest, "big") % size
-    while gcd(unit, size) != 1:
-        unit = (unit + 1) % size
-    return unit
+def unit(cell: Cell) -> int:
+    """Return a unit modulo D' that looks random and depends on nothing but the cell."""
+    size = modulus(cell)
+    seed = f"{cell.multiplier} {cell.offset} {cell.length} {cell.odd}"
+    value = int.from_bytes(hashlib.shake_256(seed.encode()).digest(size.bit_length() // 8 + 16), "big") % size
+    while gcd(value, size) != 1:
+        value = (value + 1) % size
+    return value

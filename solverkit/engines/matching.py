@@ -35,8 +35,8 @@ if TYPE_CHECKING:
 
 __all__ = ["ENGINE", "Matching"]
 
-#: Proposed words, or pairs of sums, beyond which a piece ends as incomplete.
-_MOST_PROPOSALS = 1_000_000
+#: Pairs of sums beyond which a piece ends as incomplete.
+_MOST_PAIRS = 1_000_000
 _LATE = "the time given is over"
 
 
@@ -74,7 +74,8 @@ class Matching:
             CapacityError: the cell is refused.
         """
         (cell,) = batch
-        count = self._plan(cell).count(seconds) if has_right_sign(cell) else 1
+        chosen = self._plan(cell)
+        count = chosen.count(seconds) if has_right_sign(cell) else 1
         return [Piece(self.name, batch, index, count) for index in range(count)]
 
     def run(self, piece: Piece, budget: Budget) -> PieceResult:
@@ -91,8 +92,10 @@ class Matching:
         deadline = time.monotonic() + (inf if budget.seconds is None else budget.seconds)
         (cell,) = piece.cells
         found = _Found()
-        if has_right_sign(cell):
-            chosen = self._plan(cell)
+        chosen = self._plan(cell)
+        if time.monotonic() > deadline:
+            found.reason = _LATE
+        elif has_right_sign(cell):
             found.statistics["way"] = chosen.way.value
             if chosen.way is Way.ENUMERATED:
                 _substitute(cell, ballot_words(cell.length, cell.odd), found, deadline)
@@ -129,13 +132,13 @@ def _match(cell: Cell, chosen: Plan, piece: Piece, memory: int, found: _Found, d
         ys, zs, compared = left.whole(), right.whole(), (left.count(), right.count())
     else:
         low, high = (CIRCLE * (piece.index + i) // piece.count for i in (0, 1))
-        joined = join_range(left, right, low, high, slack(cell.odd), _MOST_PROPOSALS, deadline)
+        joined = join_range(left, right, low, high, slack(cell.odd), _MOST_PAIRS, deadline)
         ys, zs, compared, found.reason = joined.left, joined.right, joined.emitted, joined.reason
         found.statistics["buckets"] = joined.buckets
     found.statistics.update(left=compared[0], right=compared[1])
-    pairs = near_pairs(ys.residues, zs.residues, slack(cell.odd), _MOST_PROPOSALS)
+    pairs = near_pairs(ys.residues, zs.residues, slack(cell.odd), _MOST_PAIRS)
     if pairs is None:
-        found.reason = f"more than {_MOST_PROPOSALS} pairs of sums match"
+        found.reason = f"more than {_MOST_PAIRS} pairs of sums match"
         return
     found.statistics["pairs"] = len(pairs)
     heads = left.words_at(firsts := _pairs_of(ys.places[pairs[:, 0]]))
@@ -167,8 +170,8 @@ def _substitute(cell: Cell, words: Iterable[int], found: _Found, deadline: float
     """Add the cycles that follow one of ``words``."""
     number = 0
     for number, word in enumerate(words, start=1):
-        if number % 1024 == 0 and (late := time.monotonic() > deadline) | (number > 4 * _MOST_PROPOSALS):
-            found.reason = _LATE if late else f"more than {4 * _MOST_PROPOSALS} words are proposed"
+        if number % 256 == 0 and time.monotonic() > deadline:
+            found.reason = _LATE
             break
         if (hit := substituted(cell, word)) is not None:
             found.hits.add(hit)

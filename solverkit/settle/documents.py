@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Iterator
 from itertools import islice
 from typing import TYPE_CHECKING, Any
@@ -12,13 +13,14 @@ from solverkit.exact.reduction import reduced
 from solverkit.findings import CellFinding, Cycle, Evidence, Verdict
 from solverkit.numerals import json_integer
 from solverkit.settle.triage import LiveCell, Triage
+from solverkit.window import Cell
 from solverkit.window_file import window_table
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
 
+    from solverkit.settle.regions import RegionFinding
     from solverkit.settle.run import Settlement
-    from solverkit.window import Cell
 
 __all__ = ["SCHEMA", "cycle_entry", "listed_cells", "settle_document", "triage_document"]
 
@@ -153,6 +155,7 @@ def settle_document(settlement: Settlement, dossier: str, *, all_cells: bool = F
             for place, side in enumerate((s.map.multiplier, s.map.offset, s.sign.word) for s in window.sides())
         }
         cells.sort(key=lambda e: (order[int(e["multiplier"]), int(e["offset"]), e["sign"]], e["length"], e["odd"]))
+    cells += [entry for finding in settlement.regions for entry in _region_cells(finding)]
     assumption = window.assumption
     return {
         "schema": SCHEMA,
@@ -160,6 +163,7 @@ def settle_document(settlement: Settlement, dossier: str, *, all_cells: bool = F
         "complete": settlement.complete,
         "cells": cells,
         "cycles": [cycle_entry(cycle) for cycle in settlement.cycles],
+        "regions": [_region_entry(finding) for finding in settlement.regions],
         "excluded": {reason: json_integer(count) for reason, count in examined.excluded.items()},
         "total": json_integer(examined.total),
         "live": json_integer(examined.live),
@@ -187,6 +191,39 @@ def _finding_entry(finding: CellFinding, live: LiveCell) -> dict[str, Any]:
     if finding.total is not None:
         entry["sample"] = len(finding.cycles)
     return entry
+
+
+def _region_cells(finding: RegionFinding) -> Iterator[dict[str, Any]]:
+    """Yield the entries of the cells of a region that hold a cycle."""
+    by_cell: dict[tuple[int, int], int] = Counter((cycle.length, cycle.odd) for cycle in finding.cycles)
+    side = finding.region.side
+    for (length, odd), count in sorted(by_cell.items()):
+        cell = Cell(side.map.multiplier, side.map.offset, length, odd, sign=side.sign)
+        yield _cell_keys(cell) | {
+            "bound": json_integer(product_bound(cell.positive())),
+            "status": finding.verdict.value,
+            "evidence": None if finding.evidence is None else finding.evidence.word,
+            "methods": ["sweep"],
+            "seconds": 0.0,
+            "cycles": count,
+        }
+
+
+def _region_entry(finding: RegionFinding) -> dict[str, Any]:
+    side = finding.region.side
+    return {
+        "multiplier": json_integer(side.map.multiplier),
+        "offset": json_integer(side.map.offset),
+        "sign": side.sign.word,
+        "live": json_integer(finding.region.count),
+        "bound": json_integer(finding.bound),
+        "swept_to": json_integer(finding.swept_to),
+        "status": finding.verdict.value,
+        "evidence": None if finding.evidence is None else finding.evidence.word,
+        "methods": ["sweep"],
+        "seconds": round(finding.seconds, 3),
+        **({"reason": finding.reason} if finding.reason else {}),
+    }
 
 
 def _excluded_entries(examined: Triage) -> Iterator[dict[str, Any]]:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import time
 from collections import defaultdict
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Protocol
 
@@ -14,6 +14,7 @@ from solverkit.ledger.ledger import Ledger, batch_key
 from solverkit.methods import Budget, merged
 from solverkit.settle.choice import CONFIRM_SECONDS, Batch, method_named, plan
 from solverkit.settle.pool import Order, executor, run_orders, usable_cores
+from solverkit.settle.regions import RegionFinding, RegionWork, conclude_region, region_work
 from solverkit.settle.triage import Criterion, Triage, triage
 from solverkit.settle.verdicts import conclude, lists_by_cell
 from solverkit.window_file import window_digest, window_table
@@ -31,6 +32,7 @@ _ORDER_SECONDS = 0.5
 _ORDER_PIECES = 64
 _SERIAL_SECONDS = 1.5
 _MOST_ROUNDS = 4
+_REGION = "sweep of a region"
 
 
 @dataclass(frozen=True, slots=True)
@@ -82,6 +84,7 @@ class Settlement:
         evidence_asked: the level asked for, or None.
         seconds: wall-clock time of this run.
         resumed: number of complete lists that were already on record.
+        regions: one finding for each side whose live cells are too many to list.
     """
 
     triage: Triage
@@ -89,6 +92,7 @@ class Settlement:
     evidence_asked: Evidence | None = None
     seconds: float = 0.0
     resumed: int = 0
+    regions: tuple[RegionFinding, ...] = ()
 
     @property
     def window(self) -> Window:
@@ -98,7 +102,8 @@ class Settlement:
     @property
     def cycles(self) -> tuple[Cycle, ...]:
         """All cycles, in the order of published lists."""
-        return tuple(sorted((c for f in self.findings for c in f.cycles), key=Cycle.sort_key))
+        found: tuple[CellFinding | RegionFinding, ...] = (*self.findings, *self.regions)
+        return tuple(sorted((c for f in found for c in f.cycles), key=Cycle.sort_key))
 
     @property
     def open_cells(self) -> tuple[CellFinding, ...]:
@@ -119,20 +124,28 @@ class Settlement:
     @property
     def complete(self) -> bool:
         """Whether every cell of the window is settled."""
-        return not self.open_cells
+        return not self.open_cells and all(region.verdict is not Verdict.OPEN for region in self.regions)
+
+    @property
+    def reaches_evidence(self) -> bool:
+        """Whether no settled part falls short of the evidence asked for."""
+        asked = self.evidence_asked
+        weak = asked is not None and any(r.evidence is not None and r.evidence < asked for r in self.regions)
+        return not weak and not self.short_of_evidence
 
     @property
     def exit_status(self) -> int:
         """What the command line answers."""
         if self.contradictions:
             return 5
-        return 3 if self.open_cells or self.short_of_evidence else 0
+        return 0 if self.complete and self.reaches_evidence else 3
 
 
 @dataclass(slots=True)
 class _State:
     """What is known while settling."""
 
+    window: Window
     ledger: Ledger
     settings: Settings
     listings: dict[tuple[str, Cell], Listing] = field(default_factory=dict)
@@ -179,15 +192,17 @@ def settle(
     examined = triage(window, Criterion.BALANCED)
     cells = _reduced_cells(examined)
     with _opened(window, dossier) as ledger:
-        state = _State(ledger, settings)
+        state = _State(window, ledger, settings)
         state.take(ledger.listings())
         state.failed.clear()
         resumed = sum(entry.complete for entry in state.listings.values())
-        _decide(cells, state, progress or _Silent())
+        progress = progress or _Silent()
+        _decide(cells, state, progress)
         lists = lists_by_cell(list(state.listings.values()))
         refused = {(c.multiplier, c.offset, c.length, c.odd): reason for c, reason in state.refused.items()}
         findings = tuple(conclude(window, live, lists, refused) for live in examined.cells)
-    return Settlement(examined, findings, settings.evidence, time.perf_counter() - begun, resumed)
+        regions = tuple(_sweep_region(region_work(window, each), state, progress) for each in examined.regions)
+    return Settlement(examined, findings, settings.evidence, time.perf_counter() - begun, resumed, regions)
 
 
 def _opened(window: Window, dossier: Path) -> Ledger:
@@ -224,9 +239,11 @@ def _decide(cells: Sequence[Cell], state: _State, progress: Progress) -> None:
     unfinished = [
         Batch(method, members, method_named(method).estimate(members))
         for _, method, members in state.ledger.batches()
-        if wanted.issuperset(members) and any(not _complete(state, method, cell) for cell in members)
+        if method != _REGION
         and (settings.methods is None or method in settings.methods)
-    ]  # fmt: skip
+        and wanted.issuperset(members)
+        and any(not _complete(state, method, cell) for cell in members)
+    ]
     if unfinished:
         _execute(unfinished, state, progress)
     for _ in range(_MOST_ROUNDS):
@@ -269,19 +286,46 @@ def _execute(batches: Sequence[Batch], state: _State, progress: Progress) -> Non
         queue += [(batch.seconds / len(pieces), p, budget) for p in pieces if p.index not in have]
         if len(have) == len(pieces):
             state.take(_recorded(state, key, work[key], None))
+    for result in _results(queue, settings, progress, sum(len(batch.cells) for batch in batches)):
+        key = keys[result.piece.method, result.piece.cells]
+        work[key][2][result.piece.index] = result
+        state.take(_recorded(state, key, work[key], result))
+
+
+def _results(
+    queue: Sequence[tuple[float, Piece, Budget]], settings: Settings, progress: Progress, cells: int
+) -> Iterator[PieceResult]:
+    """Run pieces with their estimated seconds and budgets; yield the results as they come."""
     estimated = sum(seconds for seconds, _, _ in queue)
-    progress.planned(estimated, sum(len(batch.cells) for batch in batches))
+    progress.planned(estimated, cells)
     jobs = settings.jobs or usable_cores()
     if settings.cluster is None and estimated < _SERIAL_SECONDS:
         jobs = 1
     expected = {(p.method, p.cells, p.index): seconds for seconds, p, _ in queue}
     for results in run_orders(_orders(queue), lambda: executor(jobs, settings.cluster), 3 * jobs):
         for result in results:
+            yield result
             piece = result.piece
-            key = keys[piece.method, piece.cells]
-            work[key][2][piece.index] = result
-            state.take(_recorded(state, key, work[key], result))
             progress.advanced(expected[piece.method, piece.cells, piece.index], piece.method)
+
+
+def _sweep_region(work: RegionWork, state: _State, progress: Progress) -> RegionFinding:
+    """Sweep a region, recording each piece at once; pieces on record are not run again."""
+    window, settings = state.window, state.settings
+    if work.refusal is not None or (settings.methods is not None and "sweep" not in settings.methods):
+        refusal = work.refusal or "only a sweep settles cells that are too many to list"
+        return conclude_region(window, replace(work, refusal=refusal), [], 1)
+    pieces = work.pieces(_PIECE_SECONDS)
+    key = batch_key(_REGION, (work.cell,))
+    state.ledger.add_batch(key, _REGION, (work.cell,), pieces)
+    have = {n: r for n, r in state.ledger.results(key, pieces).items() if r.complete}
+    share = work.seconds / len(pieces)
+    limit = None if settings.budget is None else max(1.0, 2 * share)
+    queue = [(share, piece, Budget(limit, settings.memory)) for piece in pieces if piece.index not in have]
+    for result in _results(queue, settings, progress, work.region.count):
+        have[result.piece.index] = result
+        state.ledger.add_result(key, result)
+    return conclude_region(window, work, list(have.values()), len(pieces))
 
 
 def _recorded(

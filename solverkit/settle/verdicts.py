@@ -51,7 +51,7 @@ def conclude(
         cycle for cycle in sorted((_cycle(live, n) for n in known), key=Cycle.sort_key) if _wanted(window, cycle)
     )
     seconds = sum(entry.seconds for entry in usable)
-    names = tuple(dict.fromkeys(entry.method for entry in complete))
+    names = tuple(sorted({entry.method for entry in complete}))
     if not complete:
         reason = "; ".join(f"{entry.method}: {entry.reason}" for entry in usable) or refused.get(
             _key(small), "not yet run"

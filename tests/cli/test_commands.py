@@ -31,7 +31,10 @@ def test_settling_3x_plus_1_finds_the_four_known_cycles_confirmed(tmp_path):
     assert {(c["least"], c["length"], c["odd"]) for c in told["cycles"]} == expected
     assert [c["least"] for c in told["cycles"]] == [-1, 1, -5, -17]
     assert {cell["evidence"] for cell in told["cells"]} == {"confirmed"}
-    assert told["excluded"]["sign"] + told["excluded"]["bound"] + told["excluded"]["words"] + len(told["cells"]) == 2 * 1830
+    assert (
+        told["excluded"]["sign"] + told["excluded"]["bound"] + told["excluded"]["words"] + len(told["cells"])
+        == 2 * 1830
+    )
 
 
 def test_settle_documents_keep_the_contract(tmp_path):
@@ -81,7 +84,9 @@ def test_triage_lists_bounds_words_and_chances(tmp_path):
 def test_triage_of_vast_windows_names_the_published_first_length(name, tmp_path):
     """Eliahou (1993); Barina (2021)."""
     data = published(name)
-    told = document("triage", "--map", "3,1", "--above", data["B"], "--lengths", "1..10^12", "--most", "3", cwd=tmp_path)
+    told = document(
+        "triage", "--map", "3,1", "--above", data["B"], "--lengths", "1..10^12", "--most", "3", cwd=tmp_path
+    )
     assert told["first_live"] == {"length": data["k"], "odd": data["x"]}
     assert told["cells"][0]["total_steps"] == data["k"] + data["x"]
     assert len(told["cells"]) == 3
@@ -147,7 +152,9 @@ WRONG = [
 ]
 
 
-@pytest.mark.parametrize(("arguments", "named"), WRONG, ids=lambda value: " ".join(value) if isinstance(value, list) else "")
+@pytest.mark.parametrize(
+    ("arguments", "named"), WRONG, ids=lambda value: " ".join(value) if isinstance(value, list) else ""
+)
 def test_wrong_input_gets_one_line_and_status_2(arguments, named, tmp_path):
     run = solverkit(*arguments, cwd=tmp_path)
     assert (run.returncode, run.stdout) == (2, "")
@@ -191,6 +198,8 @@ def test_a_missing_cluster_library_or_scheduler_is_one_line(tmp_path):
 
 
 def test_output_into_a_closed_pipe_is_no_traceback(tmp_path):
-    command = f"{sys.executable} -m solverkit triage --map 3,-1 --lengths 1..100 --format json | head -c 100 > /dev/null"
+    command = (
+        f"{sys.executable} -m solverkit triage --map 3,-1 --lengths 1..100 --format json | head -c 100 > /dev/null"
+    )
     run = subprocess.run(["bash", "-c", command], cwd=tmp_path, capture_output=True, text=True, check=False)
     assert "Traceback" not in run.stderr

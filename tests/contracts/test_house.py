@@ -84,16 +84,19 @@ def test_exact_contains_no_float():
         for node in ast.walk(ast.parse(path.read_text(encoding="utf-8"))):
             assert not (isinstance(node, ast.Constant) and isinstance(node.value, float)), f"{path.name}:{node.lineno}"
             assert not (isinstance(node, ast.Name) and node.id == "float"), f"{path.name}:{node.lineno}"
-            assert not (isinstance(node, ast.BinOp) and isinstance(node.op, ast.Div) and "arb" not in ast.dump(node)) or (
-                path.name in {"bounds.py", "chances.py", "cone.py", "enclosures.py"}
-            ), f"{path.name}:{node.lineno}"
+            assert not (
+                isinstance(node, ast.BinOp) and isinstance(node.op, ast.Div) and "arb" not in ast.dump(node)
+            ) or (path.name in {"bounds.py", "chances.py", "cone.py", "enclosures.py"}), f"{path.name}:{node.lineno}"
 
 
 @pytest.mark.parametrize(
     ("statement", "unwanted"),
     [
         ("import solverkit", {"numba", "networkx", "pysat", "matplotlib", "flint", "numpy", "rich"}),
-        ("from solverkit.cli.commands import application; application()", {"numba", "networkx", "pysat", "numpy", "matplotlib"}),
+        (
+            "from solverkit.cli.commands import application; application()",
+            {"numba", "networkx", "pysat", "numpy", "matplotlib"},
+        ),
         ("import solverkit.settle.run", {"numba", "networkx", "pysat", "numpy", "matplotlib"}),
     ],
 )

@@ -41,9 +41,13 @@ def test_imprimitive_cycles_come_from_the_divisors(d, inner, tmp_path):
 @pytest.mark.parametrize(("q", "name"), [(5, "CY-02"), (7, "CY-03")])
 def test_cycles_of_other_multipliers_on_both_sides(q, name, tmp_path):
     """Crandall (1978), from memory."""
-    settlement = settle(Window((Map(q, 1),), Span(1, 40), signs=(Sign.POSITIVE, Sign.NEGATIVE)), tmp_path / "d", Settings(jobs=1))
+    settlement = settle(
+        Window((Map(q, 1),), Span(1, 40), signs=(Sign.POSITIVE, Sign.NEGATIVE)), tmp_path / "d", Settings(jobs=1)
+    )
     assert settlement.exit_status == 0
-    assert {(c.least, c.length, c.odd) for c in settlement.cycles} == {(c["min"], c["k"], c["x"]) for c in published(name)}
+    assert {(c.least, c.length, c.odd) for c in settlement.cycles} == {
+        (c["min"], c["k"], c["x"]) for c in published(name)
+    }
 
 
 def test_rational_cycles_of_every_short_word():
@@ -63,7 +67,9 @@ def test_every_word_is_a_cycle_when_d_equals_the_determinant(tmp_path):
     """Counts of Lyndon words whose cycle is primitive, computed independently."""
     for k, x, d, words in published("CY-66")[:3]:
         sign = Sign.POSITIVE
-        settlement = settle(Window((Map(3, d),), Span(k, k), Span(x, x), signs=(sign,)), tmp_path / str(d), Settings(jobs=1))
+        settlement = settle(
+            Window((Map(3, d),), Span(k, k), Span(x, x), signs=(sign,)), tmp_path / str(d), Settings(jobs=1)
+        )
         assert len(settlement.cycles) == words
 
 

@@ -108,9 +108,7 @@ PATTERNS = st.recursive(
     lambda inner: st.one_of(
         st.builds("({}|{})".format, inner, inner),
         st.builds("{}{}".format, inner, inner),
-        st.builds(
-            "({}){}".format, inner, st.sampled_from(["*", "+", "?", "{0}", "{2}", "{1,3}", "{0,2}", "{2,}"])
-        ),
+        st.builds("({}){}".format, inner, st.sampled_from(["*", "+", "?", "{0}", "{2}", "{1,3}", "{0,2}", "{2,}"])),
     ),
     max_leaves=6,
 ).filter(bool)
@@ -241,9 +239,7 @@ def by_definition(name, value, q, d, least):
 
     def admitted(condition):
         tested = {"least": [least], "largest": [largest]}.get(condition.of.value, elements)
-        found = [
-            any((element - r) % condition.modulus == 0 for r in condition.residues) for element in tested
-        ]
+        found = [any((element - r) % condition.modulus == 0 for r in condition.residues) for element in tested]
         found = found if condition.inside else [not each for each in found]
         return any(found) if condition.of is Among.SOME else all(found)
 
@@ -258,9 +254,7 @@ def by_definition(name, value, q, d, least):
             not value or all(abs(a - b) <= 1 for m, a in windows(word) for n, b in windows(word) if m == n)
         ),
         "palindromic": lambda: not value or any(word[i:] + word[:i] == word[::-1] for i in range(k)),
-        "discrepancy_at_most": lambda: all(
-            abs(ones - Fraction(m * x, k)) <= value for m, ones in windows(word)
-        ),
+        "discrepancy_at_most": lambda: all(abs(ones - Fraction(m * x, k)) <= value for m, ones in windows(word)),
         "prefix": lambda: all(symbol == word[i % k] for i, symbol in enumerate(value)),
         "largest_at_most": lambda: all(size <= value for size in sizes),
         "ratio_at_most": lambda: max(sizes) * value.denominator <= value.numerator * min(sizes),

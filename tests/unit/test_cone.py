@@ -23,7 +23,15 @@ def test_floor_sum_equals_its_definition(count, modulus, factor, shift):
     assert floor_sum(count, modulus, factor, shift) == sum((factor * i + shift) // modulus for i in range(count))
 
 
-@given(multipliers | st.just(181), offsets, bounds, st.integers(1, 24), st.integers(0, 12), st.integers(1, 24), st.integers(0, 12))
+@given(
+    multipliers | st.just(181),
+    offsets,
+    bounds,
+    st.integers(1, 24),
+    st.integers(0, 12),
+    st.integers(1, 24),
+    st.integers(0, 12),
+)
 def test_counts_and_cells_equal_a_walk_through_all_cells(q, d, above, k, more_k, x, more_x):
     lengths, odd = Span(k, k + more_k), Span(x, x + more_x)
     cone = ThinCone(Map(q, d), above, lengths, odd)
@@ -53,7 +61,12 @@ def test_the_published_range_of_limits_for_one_length_is_exact_at_both_ends():
     def first(limit):
         return next(ThinCone(Map(3, 1), limit - 1, Span(1, 10**9), Span(1, 10**9)).cells())[0]
 
-    assert [first(low - 1) == 17087915, first(low), first(high), first(high + 1) == 17087915] == [False, 17087915, 17087915, False]
+    assert [first(low - 1) == 17087915, first(low), first(high), first(high + 1) == 17087915] == [
+        False,
+        17087915,
+        17087915,
+        False,
+    ]
 
 
 def test_best_approximations_from_above_are_the_lengths_where_the_bound_jumps():

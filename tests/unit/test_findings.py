@@ -24,7 +24,10 @@ def test_a_cycle_knows_its_facts():
     assert SEVENTEEN.total == sum(SEVENTEEN.elements())
 
 
-@pytest.mark.parametrize(("d", "least", "length"), [(1, 1, 4), (1, 2, 2), (1, 3, 2), (1, -17, 22), (1, 0, 1), (1, 1, 1), (-1, 1, 2), (5, 20, 5), (1, 7, 0)])
+@pytest.mark.parametrize(
+    ("d", "least", "length"),
+    [(1, 1, 4), (1, 2, 2), (1, 3, 2), (1, -17, 22), (1, 0, 1), (1, 1, 1), (-1, 1, 2), (5, 20, 5), (1, 7, 0)],
+)
 def test_what_is_no_cycle_from_its_least_element_is_refused(d, least, length):
     with pytest.raises(ContradictionError, match="not the least element"):
         Cycle(3, d, least, length)
@@ -75,7 +78,12 @@ def test_findings_refuse_parts_that_do_not_fit():
 def test_errors_keep_their_values_over_a_process_border():
     from solverkit.errors import CapacityError, DossierError, MissingPartError
 
-    for error in (InputError("k", -1, "1 or more"), CapacityError("m", "r"), DossierError("p", "r"), MissingPartError("p", "r")):
+    for error in (
+        InputError("k", -1, "1 or more"),
+        CapacityError("m", "r"),
+        DossierError("p", "r"),
+        MissingPartError("p", "r"),
+    ):
         again = pickle.loads(pickle.dumps(error))
         assert isinstance(again, SolverkitError)
         assert (type(again), str(again), again.exit_status) == (type(error), str(error), error.exit_status)

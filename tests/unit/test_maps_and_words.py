@@ -22,7 +22,10 @@ from tests.published import published
 from tests.strategies import maps, words
 
 
-@pytest.mark.parametrize(("q", "d", "field"), [(4, 1, "multiplier"), (1, 1, "multiplier"), (-3, 1, "multiplier"), (3, 0, "offset"), (3, 2, "offset")])
+@pytest.mark.parametrize(
+    ("q", "d", "field"),
+    [(4, 1, "multiplier"), (1, 1, "multiplier"), (-3, 1, "multiplier"), (3, 0, "offset"), (3, 2, "offset")],
+)
 def test_even_or_small_values_are_refused_by_name(q, d, field):
     with pytest.raises(InputError) as caught:
         Map(q, d)
@@ -63,7 +66,8 @@ def test_circuits_do_not_change_under_rotation(word):
 def test_lyndon_words_of_fixed_density_are_all_least_aperiodic_rotations(length):
     for odd in range(length + 1):
         expected = sorted(
-            w for w in map("".join, product("01", repeat=length))
+            w
+            for w in map("".join, product("01", repeat=length))
             if w.count("1") == odd and is_aperiodic(w) and w == min(rotations(w))
         )
         assert sorted(lyndon_words(length, odd)) == expected

@@ -1,6 +1,6 @@
 """The residue transition graph mod 2^m and the least-element sieve."""
 
-from itertools import product
+from itertools import pairwise, product
 from math import comb
 
 import networkx as nx
@@ -56,7 +56,7 @@ def test_pruning_keeps_exactly_the_edges_on_closed_walks(map_, depth, length, da
     for start in graph if starts is None else starts:
         for walk in _walks(graph, start, length):
             if walk[-1] == start and sum(r & 1 for r in walk[:-1]) == odd:
-                expected |= set(zip(walk, walk[1:], strict=False))
+                expected |= set(pairwise(walk))
     assert set(pruned(graph, length, odd, starts).edges) == expected
 
 

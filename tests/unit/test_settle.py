@@ -113,15 +113,21 @@ class TestVerdicts:
         return conclude(window, live, lists_by_cell(entries), {})
 
     def test_two_families_confirm(self):
-        found = self._finding(Listing(self.CELL, "sweep", self.ALL, True), Listing(self.CELL, "cnf:orbit@cadical195", self.ALL, True))
+        found = self._finding(
+            Listing(self.CELL, "sweep", self.ALL, True), Listing(self.CELL, "cnf:orbit@cadical195", self.ALL, True)
+        )
         assert (found.verdict, found.evidence, len(found.cycles)) == (Verdict.FOUND, Evidence.CONFIRMED, 7)
 
     def test_two_methods_of_one_family_do_not(self):
-        found = self._finding(Listing(self.CELL, "matching", self.ALL, True), Listing(self.CELL, "census", self.ALL, True))
+        found = self._finding(
+            Listing(self.CELL, "matching", self.ALL, True), Listing(self.CELL, "census", self.ALL, True)
+        )
         assert found.evidence is Evidence.COMPUTED
 
     def test_different_lists_contradict_and_both_are_kept(self):
-        found = self._finding(Listing(self.CELL, "sweep", self.ALL[:-1], True), Listing(self.CELL, "matching", self.ALL[1:], True))
+        found = self._finding(
+            Listing(self.CELL, "sweep", self.ALL[:-1], True), Listing(self.CELL, "matching", self.ALL[1:], True)
+        )
         assert found.contradiction
         assert found.verdict is Verdict.OPEN
         assert [c.least for c in found.cycles] == list(self.ALL)

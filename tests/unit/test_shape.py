@@ -191,9 +191,7 @@ def test_a_table_with_every_key_comes_back_canonical():
 
 
 def test_values_that_state_nothing_are_left_out_and_zeros_are_kept():
-    assert (
-        shape_table(shape_from_table({"balanced": False, "palindromic": False})) == {} == shape_table(Shape())
-    )
+    assert shape_table(shape_from_table({"balanced": False, "palindromic": False})) == {} == shape_table(Shape())
     assert shape_table(Shape(longest_even_run=0, discrepancy_at_most=Fraction(0))) == {
         "longest_even_run": 0,
         "discrepancy_at_most": 0,

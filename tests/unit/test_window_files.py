@@ -53,7 +53,7 @@ def test_options_replace_what_the_file_says(tmp_path):
 
 
 def test_several_map_tables_are_read(tmp_path):
-    text = '[[map]]\nmultiplier = 3\noffsets = 1\n[[map]]\nmultiplier = 5\noffsets = [-1]\n[cycle]\nlengths = 9\n'
+    text = "[[map]]\nmultiplier = 3\noffsets = 1\n[[map]]\nmultiplier = 5\noffsets = [-1]\n[cycle]\nlengths = 9\n"
     assert _from(text, tmp_path).maps == (Map(3, 1), Map(5, -1))
 
 
@@ -122,7 +122,8 @@ def test_map_options_of_another_form_are_refused(text):
 
 
 @pytest.mark.parametrize(
-    ("text", "value"), [("12", 12), (" -5 ", -5), ("2^71", 2**71), ("-2^3", -8), ("10^3-1", 999), ("0^9", 0), ("1^999999", 1), (7, 7)]
+    ("text", "value"),
+    [("12", 12), (" -5 ", -5), ("2^71", 2**71), ("-2^3", -8), ("10^3-1", 999), ("0^9", 0), ("1^999999", 1), (7, 7)],
 )
 def test_integers_are_read_in_every_form(text, value):
     assert parse_integer(text, "n") == value
@@ -168,7 +169,13 @@ def test_window_tables_read_back_to_the_same_window(tmp_path):
 def test_digest_ignores_the_title_and_nothing_else(tmp_path):
     window = _from(FULL, tmp_path)
     assert window_digest(_from(FULL.replace("Table 4", "Table 5"), tmp_path)) == window_digest(window)
-    for old, new in [("1..60", "1..61"), ("2^20", "2^21"), ("both", "positive"), ("11..49", "11..51"), ("2^71", "2^72")]:
+    for old, new in [
+        ("1..60", "1..61"),
+        ("2^20", "2^21"),
+        ("both", "positive"),
+        ("11..49", "11..51"),
+        ("2^71", "2^72"),
+    ]:
         assert window_digest(_from(FULL.replace(old, new), tmp_path)) != window_digest(window)
 
 

@@ -35,7 +35,14 @@ def test_a_bound_below_the_least_cycle_empties_or_excludes_it(cell):
         assert windows.empty or all(n not in room.least for room in windows.rooms.values())
 
 
-@given(st.integers(1, 500), st.integers(-4000, 4000), st.integers(1, 500), st.integers(0, 60), st.integers(0, 60), st.integers(0, 9))
+@given(
+    st.integers(1, 500),
+    st.integers(-4000, 4000),
+    st.integers(1, 500),
+    st.integers(0, 60),
+    st.integers(0, 60),
+    st.integers(0, 9),
+)
 def test_in_order_is_the_set_of_n_that_satisfy_the_inequality(slope, shift, denominator, low, more, least):
     span = in_order(slope, shift, denominator, low, low + more, least)
     expected = [n for n in range(low, low + more + 1) if slope * n + shift >= denominator * n + least]
