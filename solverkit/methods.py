@@ -14,7 +14,11 @@ from typing import Protocol
 from solverkit.errors import ContradictionError
 from solverkit.window import Cell
 
-__all__ = ["Budget", "Family", "Hit", "Listing", "Method", "Piece", "PieceResult", "merged"]
+__all__ = ["LIST_AT_MOST", "Budget", "Family", "Hit", "Listing", "Method", "Piece", "PieceResult", "merged"]
+
+
+#: Cells with more cycles than this are counted, and a sample of them is listed, unless a run says otherwise.
+LIST_AT_MOST = 10_000
 
 
 class Family(StrEnum):
@@ -36,10 +40,12 @@ class Budget:
     Args:
         seconds: time after which it ends as incomplete, or None for no limit.
         memory: bytes, or None for no limit.
+        list_at_most: a method that can count may report the number of cycles and a sample beyond this.
     """
 
     seconds: float | None = None
     memory: int | None = None
+    list_at_most: int = LIST_AT_MOST
 
 
 @dataclass(frozen=True, slots=True, order=True)

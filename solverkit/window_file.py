@@ -29,13 +29,14 @@ _SIGNS = {
 }
 _KEYS = {
     "": ("title", "map", "cycle", "assume", "shape"),
-    "map": ("multiplier", "offsets"),
+    "map": ("multiplier", "offsets", "offsets_at_most"),
     "cycle": ("lengths", "odd_steps", "above", "sign", "primitive"),
     "assume": ("no_cycle_below", "source"),
 }
 #: Key of a window file -> the option that means the same.
 _OPTIONS = {
     "map": "--map",
+    "map.offsets_at_most": "--offsets-at-most",
     "cycle.lengths": "--lengths",
     "cycle.odd_steps": "--odd",
     "cycle.above": "--above",
@@ -80,6 +81,8 @@ def window_from_table(table: Mapping[str, Any], overrides: Mapping[str, Any] | N
     named = {key: _OPTIONS.get(key, key) if key in given else key for key in _OPTIONS}
     _only_known(table, "")
     cycle = _subtable(table, "cycle")
+    if "map.offsets_at_most" in given and not any("any" in map_option(text)[1] for text in given.get("map", ())):
+        raise InputError(_OPTIONS["map.offsets_at_most"], given["map.offsets_at_most"], "this only beside --map Q,any")
     values = {f"cycle.{key}": value for key, value in cycle.items()} | given
     lengths = values.get("cycle.lengths")
     if lengths is None:
@@ -89,7 +92,9 @@ def window_from_table(table: Mapping[str, Any], overrides: Mapping[str, Any] | N
     if not isinstance(sign, str) or sign not in _SIGNS:
         raise InputError(named["cycle.sign"], sign, "positive, negative or both")
     return Window(
-        maps=_maps_of_options(given["map"]) if "map" in given else _maps_of_table(table),
+        maps=_maps_of_options(given["map"], given.get("map.offsets_at_most"))
+        if "map" in given
+        else _maps_of_table(table),
         lengths=parse_span(lengths, named["cycle.lengths"], 1, MAX_LENGTH),
         odd=None if odd == "any" else parse_span(odd, named["cycle.odd_steps"], 1, MAX_LENGTH),
         above=parse_integer(values.get("cycle.above", 0), named["cycle.above"], 0),
@@ -137,13 +142,12 @@ def _maps_of_table(table: Mapping[str, Any]) -> tuple[Map, ...]:
         if not isinstance(each, Mapping):
             raise InputError("map", each, "a table [map] with the keys multiplier, offsets")
         _only_known(each, "map")
-        for key in _KEYS["map"]:
+        for key in ("multiplier", "offsets"):
             if key not in each:
-                raise InputError(
-                    f"map.{key}", "nothing", "this key, beside " + " and ".join(k for k in _KEYS["map"] if k != key)
-                )
+                raise InputError(f"map.{key}", "nothing", "this key; a map has multiplier and offsets")
         offsets = each["offsets"]
         parts = offsets if isinstance(offsets, list) else [offsets]
+        parts = _without_any(parts, each.get("offsets_at_most"), "map.offsets_at_most")
         maps += _maps(each["multiplier"], parts, "map.multiplier", "map.offsets")
     return _without_repeats(maps)
 
@@ -153,14 +157,27 @@ def map_option(text: str) -> tuple[str, list[str]]:
     multiplier, comma, rest = text.partition(",")
     parts = rest.split(",")
     if not comma or not all(part.strip() for part in (multiplier, *parts)):
-        raise InputError("--map", text, "Q,D such as 3,1 or 3,-5 or 3,5..49 or 5,1,3,7..21")
+        raise InputError("--map", text, "Q,D such as 3,1 or 3,-5 or 3,5..49 or 5,1,3,7..21 or 3,any")
     return multiplier, parts
 
 
-def _maps_of_options(texts: Iterable[str]) -> tuple[Map, ...]:
+def _without_any(parts: list[Any], at_most: object, field: str) -> list[Any]:
+    """Replace ``any`` by the range of all offsets of either sign up to a bound, which must then be given."""
+    if "any" not in parts:
+        if at_most is not None:
+            raise InputError(field, at_most, "this only beside the offsets any")
+        return parts
+    if at_most is None:
+        raise InputError(field, "nothing", "an integer N: the offsets any are those with |d| at most N")
+    top = parse_integer(at_most, field, 1, MAX_MAPS)
+    return [f"-{top}..{top}" if part == "any" else part for part in parts]
+
+
+def _maps_of_options(texts: Iterable[str], at_most: object) -> tuple[Map, ...]:
     maps: list[Map] = []
     for text in texts:
         multiplier, parts = map_option(text)
+        parts = _without_any(list(parts), at_most if "any" in parts else None, _OPTIONS["map.offsets_at_most"])
         maps += _maps(multiplier, parts, "--map multiplier", "--map offset")
     return _without_repeats(maps)
 

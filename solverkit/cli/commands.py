@@ -132,6 +132,12 @@ def settle(
     limit_memory: Annotated[
         float | None, typer.Option("--limit-memory", metavar="GiB", min=0, help="Memory one worker may use.")
     ] = None,
+    list_at_most: Annotated[
+        int,
+        typer.Option(
+            "--list-at-most", metavar="N", min=20, help="A cell with more cycles gives their number and a sample."
+        ),
+    ] = 10_000,
     all_cells: Annotated[bool, typer.Option("--all-cells", help="JSON also lists the excluded cells.")] = False,
     format: FormatOption = Format.TEXT,  # noqa: A002
 ) -> int:
@@ -152,6 +158,7 @@ def settle(
         cluster=cluster,
         budget=budget,
         memory=None if limit_memory is None else round(limit_memory * 2**30),
+        list_at_most=list_at_most,
     )
     try:
         with progress_bar() as progress:

@@ -31,6 +31,10 @@ def _stated(
         list[str] | None,
         _option("--map", metavar="Q,D", help="A map; D may be a list or a range: 3,5..49 (repeatable)."),
     ] = None,
+    offsets_at_most: Annotated[
+        str | None,
+        _option("--offsets-at-most", metavar="N", help="With --map Q,any: all odd offsets with |d| at most N."),
+    ] = None,
     lengths: Annotated[str | None, _option("--lengths", metavar="A..B", help="Cycle lengths k.")] = None,
     odd: Annotated[str | None, _option("--odd", metavar="A..B", help="Numbers x of odd steps; any by default.")] = None,
     above: Annotated[
@@ -45,6 +49,7 @@ def _stated(
     table = {} if window_file is None else read_window(window_file)
     values = {
         "map": maps or None,
+        "map.offsets_at_most": offsets_at_most,
         "cycle.lengths": lengths,
         "cycle.odd_steps": odd,
         "cycle.above": above,

@@ -6,9 +6,9 @@ The enumeration is the one of ``solverkit.words.lyndon_words``, with its state i
 when a buffer is full and go on later. It places the rarer of the two letters. β is a sum of one weight for
 each of them, plus a constant, also when the rarer letter is 0: see ``_census_scan``.
 
-The fraction is made of ⌊2^64·w/R⌋ over the weights w of the ones, in wrapping unsigned arithmetic: when R
-divides β, the exact sum is a multiple of 2^64 and the running one is at most x below it, so no word with R |
-β is lost. What passes by chance is removed by the exact check.
+The fraction is made of ⌊2^64·(u·w mod R)/R⌋ over the weights w of the ones, u a unit mod R, in wrapping
+unsigned arithmetic: when R divides β, the exact sum is a multiple of 2^64 and the running one is at most x
+below it, so no word with R | β is lost. What passes by chance is removed by the exact check.
 
 Source: Ruskey & Sawada, SIAM J. Comput. 29 (1999) 671-684.
 """

@@ -12,9 +12,11 @@ again a constant and one term for each rare letter. Modulo 2^64 this holds for Î
 
 from __future__ import annotations
 
+import random
 import time
 from dataclasses import dataclass
 from itertools import accumulate, repeat
+from math import gcd
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -127,6 +129,8 @@ def screened_words(
     from solverkit.engines._census_kernels import scan_words  # noqa: PLC0415 - numba loads only when it is used
 
     powers, twos = _residues(multiplier, odd, divisor), _residues(2, length, divisor)
+    unit = _unit(divisor)
+    powers = [power * unit % divisor for power in powers]
 
     def fraction(j: int, p: int) -> int:
         return (powers[odd - 1 - j] * twos[p] % divisor << 64) // divisor
@@ -152,6 +156,19 @@ def _residues(base: int, count: int, modulus: int) -> list[int]:
     return list(
         accumulate(repeat(base, count - 1), lambda power, factor: power * factor % modulus, initial=1 % modulus)
     )
+
+
+def _unit(modulus: int) -> int:
+    """Return a random unit, the same every time.
+
+    Without it the screen would be blunt where many words have Î² just above a small multiple of R, as they do when
+    nearly all steps are odd.
+    """
+    chance = random.Random(modulus)  # noqa: S311 - no secret
+    while True:
+        unit = chance.randrange(1, modulus + 1)
+        if gcd(unit, modulus) == 1:
+            return unit
 
 
 def _few(length: int, rare: int) -> NDArray[np.uint16]:

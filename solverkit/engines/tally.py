@@ -113,7 +113,12 @@ class Tally:
         if (cell.determinant > 0) != (cell.offset > 0):
             return None
         modulus = modulus_of(cell)
-        if self._is_small(cell, modulus) or modulus == 1:
+        if self._is_small(cell, modulus):
+            return None
+        expected = lyndon_count(cell.length, cell.odd) // modulus
+        if expected > 2 * self.list_at_most and not _bound_is_idle(cell):
+            return f"about 2^{expected.bit_length()} cycles are too many to compare with the bound {cell.above}"
+        if modulus == 1:
             return None
         if modulus >= _LARGEST_MODULUS:
             return f"the modulus |D|/gcd(D, d) has {modulus.bit_length()} bits; at most 31 are possible"

@@ -11,7 +11,7 @@ from typing import TYPE_CHECKING, Protocol
 from solverkit.errors import DossierError
 from solverkit.findings import CellFinding, Cycle, Evidence, Verdict
 from solverkit.ledger.ledger import Ledger, batch_key
-from solverkit.methods import Budget, merged
+from solverkit.methods import LIST_AT_MOST, Budget, merged
 from solverkit.settle.choice import CONFIRM_SECONDS, Batch, method_named, plan
 from solverkit.settle.pool import Order, executor, run_orders, usable_cores
 from solverkit.settle.regions import RegionFinding, RegionWork, conclude_region, region_work
@@ -46,6 +46,7 @@ class Settings:
         cluster: address of a Dask scheduler, or None.
         budget: seconds that one method may spend on one cell, or None.
         memory: bytes that one worker may use, or None.
+        list_at_most: a cell with more cycles reports their exact number and a sample.
     """
 
     evidence: Evidence | None = None
@@ -54,6 +55,7 @@ class Settings:
     cluster: str | None = None
     budget: float | None = None
     memory: int | None = None
+    list_at_most: int = LIST_AT_MOST
 
 
 class Progress(Protocol):
@@ -200,7 +202,7 @@ def settle(
         _decide(cells, state, progress)
         lists = lists_by_cell(list(state.listings.values()))
         refused = {(c.multiplier, c.offset, c.length, c.odd): reason for c, reason in state.refused.items()}
-        findings = tuple(conclude(window, live, lists, refused) for live in examined.cells)
+        findings = tuple(conclude(window, live, lists, refused, settings.list_at_most) for live in examined.cells)
         regions = tuple(_sweep_region(region_work(window, each), state, progress) for each in examined.regions)
     return Settlement(examined, findings, settings.evidence, time.perf_counter() - begun, resumed, regions)
 
@@ -358,7 +360,7 @@ def _budget(batch: Batch, pieces: int, settings: Settings) -> Budget:
     seconds = None
     if settings.budget is not None:
         seconds = max(settings.budget * len(batch.cells) / pieces, 1e-3)
-    return Budget(seconds, settings.memory)
+    return Budget(seconds, settings.memory, settings.list_at_most)
 
 
 def default_dossier(window: Window) -> Path:

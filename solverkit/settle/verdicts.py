@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, TypeVar
 
 from solverkit.findings import CellFinding, Cycle, Evidence, Verdict
+from solverkit.methods import LIST_AT_MOST
 from solverkit.settle.choice import method_named
 
 if TYPE_CHECKING:
@@ -18,6 +19,8 @@ if TYPE_CHECKING:
 __all__ = ["conclude", "lists_by_cell"]
 
 _Key = tuple[int, int, int, int]
+_Item = TypeVar("_Item")
+_SAMPLE = 20
 
 
 def _key(cell: Cell) -> _Key:
@@ -33,13 +36,18 @@ def lists_by_cell(listings: Sequence[Listing]) -> dict[_Key, list[Listing]]:
 
 
 def conclude(
-    window: Window, live: LiveCell, lists: Mapping[_Key, list[Listing]], refused: Mapping[_Key, str]
+    window: Window,
+    live: LiveCell,
+    lists: Mapping[_Key, list[Listing]],
+    refused: Mapping[_Key, str],
+    list_at_most: int = LIST_AT_MOST,
 ) -> CellFinding:
     """Return the finding on one live cell.
 
     Lists of the reduced cell with a bound at or below the cell's own count; what they hold above that bound is
-    multiplied back and checked by iteration. Methods that contradict each other leave the cell open, with the cycles
-    of all of them.
+    multiplied back and checked by iteration. A cell with more than ``list_at_most`` cycles reports their exact
+    number and a sample, spread over the list. Methods that contradict each other leave the cell open, with the
+    cycles of all of them.
     """
     small = live.reduction.cell
     usable = [entry for entry in lists.get(_key(small), ()) if entry.cell.above <= small.above]
@@ -47,6 +55,10 @@ def conclude(
         entry for entry in usable if entry.complete and (entry.total is None or entry.cell.above == small.above)
     ]
     known = sorted({n for entry in usable for n in entry.least if n > small.above})
+    number = len(known)
+    filtered = window.primitive or window.shape is not None
+    if number > list_at_most and not filtered:
+        known = _spread(known)
     cycles = tuple(
         cycle for cycle in sorted((_cycle(live, n) for n in known), key=Cycle.sort_key) if _wanted(window, cycle)
     )
@@ -59,20 +71,29 @@ def conclude(
         return CellFinding(live.cell, Verdict.OPEN, cycles, seconds=seconds, reason=reason)
     listed = {_above(entry, small) for entry in complete if entry.total is None}
     counts = {entry.total for entry in complete if entry.total is not None} | {len(least) for least in listed}
-    if len(listed) > 1 or len(counts) > 1:
-        reason = "; ".join(_told(entry, small) for entry in complete)
+    # Also a cycle that an incomplete list has and a complete one lacks is a contradiction.
+    if len(listed) > 1 or len(counts) > 1 or (listed and counts != {number}):
+        reason = "; ".join(_told(entry, small) for entry in usable)
         return CellFinding(
             live.cell, Verdict.OPEN, cycles, methods=names, seconds=seconds, reason=reason, contradiction=True
         )
     families = {method_named(name).family for name in names}
     evidence = Evidence.CONFIRMED if len(families) > 1 else Evidence.COMPUTED
     (count,) = counts
-    total = None if listed or count == len(known) else count
-    if total is not None and (window.shape is not None or window.primitive):
+    total = None if count == len(known) else count
+    if total is not None and not listed and filtered:
         reason = f"{total} cycles were counted, not listed, so conditions on them can't be checked"
         return CellFinding(live.cell, Verdict.OPEN, cycles, seconds=seconds, reason=reason)
+    if filtered:
+        total = len(cycles) if len(cycles) > list_at_most else None
+        cycles = tuple(_spread(cycles)) if total is not None else cycles
     verdict = Verdict.FOUND if cycles else Verdict.NONE
     return CellFinding(live.cell, verdict, cycles, evidence, names, seconds, total=total)
+
+
+def _spread(items: Sequence[_Item]) -> list[_Item]:
+    """Return a sample that is spread evenly over ``items``, both ends included."""
+    return [items[i * (len(items) - 1) // (_SAMPLE - 1)] for i in range(_SAMPLE)]
 
 
 def _above(entry: Listing, small: Cell) -> tuple[int, ...]:

@@ -272,14 +272,19 @@ class TestScan:
 
     @pytest.mark.parametrize(("length", "odd"), [(18, 12), (20, 10)])
     def test_screen_keeps_a_word_whose_beta_is_a_divisor_beyond_64_bits(self, length, odd):
-        """R is the β of one visited word, for q = 181; it passes, with few that lie just above it."""
+        """R is the β of one visited word, for q = 181; it passes, and hardly another."""
         everything = [ones for block in screened_words(181, length, odd) for ones in block.ones(length)]
         planted = everything[len(everything) // 3]
         divisor = sum(181 ** (odd - 1 - j) << p for j, p in enumerate(planted))
         assert divisor.bit_length() > 64
         kept = [ones for block in screened_words(181, length, odd, divisor) for ones in block.ones(length)]
         assert planted in kept
-        assert len(kept) < 10
+        assert len(kept) == 1
+
+    def test_screen_is_sharp_where_nearly_all_steps_are_odd(self):
+        """There β is just above |D| for most words of (3, 120, 117), by less than one part in 2^64."""
+        determinant = 3**117 - 2**120
+        assert sum(block.count for block in screened_words(3, 120, 117, determinant)) < 5
 
     @pytest.mark.parametrize(("length", "odd"), [(1, 1), (7, 3), (8, 4), (8, 5), (9, 8), (20, 13)])
     def test_weights_of_the_rarer_letter_add_up_to_beta(self, length, odd):

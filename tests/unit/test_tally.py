@@ -280,6 +280,7 @@ class TestMethod:
             (Cell(3, 1, 20_000, 12_000), "length"),
             (Cell(3, 1, 60, 37), "bits"),
             (Cell(3, 1, 31, 18), "MiB"),
+            (Cell(3, 5077565, 27, 17, above=10**9), "bound"),
         ],
         ids=str,
     )

@@ -115,6 +115,16 @@ def test_files_that_are_no_windows_are_refused(tmp_path):
         read_window(tmp_path)
 
 
+def test_any_offset_up_to_a_bound_means_both_signs():
+    window = window_from_table({}, {"map": ["3,any"], "map.offsets_at_most": "6", "cycle.lengths": "5"})
+    assert window.maps == tuple(Map(3, d) for d in range(-5, 6, 2))
+    table = {"map": {"multiplier": 3, "offsets": "any", "offsets_at_most": 6}, "cycle": {"lengths": 5}}
+    assert window_from_table(table) == window
+    for wrong in ({"map": ["3,any"]}, {"map": ["3,1"], "map.offsets_at_most": "6"}, {"map": ["3,any"], "map.offsets_at_most": "0"}):
+        with pytest.raises(InputError, match="offsets-at-most"):
+            window_from_table({}, wrong | {"cycle.lengths": "5"})
+
+
 @pytest.mark.parametrize("text", ["3", "3,", ",1", "3,1,,5", "", "3,1..", "3;1", "3,1 5"])
 def test_map_options_of_another_form_are_refused(text):
     with pytest.raises(InputError, match="--map"):
