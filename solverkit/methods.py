@@ -40,12 +40,13 @@ class Budget:
     Args:
         seconds: time after which it ends as incomplete, or None for no limit.
         memory: bytes, or None for no limit.
-        list_at_most: a method that can count may report the number of cycles and a sample beyond this.
+        list_at_most: a method that can count may report the number of cycles and a sample beyond this; None leaves
+            it to the method.
     """
 
     seconds: float | None = None
     memory: int | None = None
-    list_at_most: int = LIST_AT_MOST
+    list_at_most: int | None = None
 
 
 @dataclass(frozen=True, slots=True, order=True)

@@ -1,9 +1,11 @@
-"""Profiles of hypothesis; a missing part fails."""
+"""Profiles of hypothesis; a cache folder of the tests' own."""
 
 import os
+import tempfile
 
 from hypothesis import HealthCheck, settings
 
+os.environ["XDG_CACHE_HOME"] = tempfile.mkdtemp(prefix="solverkit-tests-")
 settings.register_profile("dev", deadline=None, suppress_health_check=[HealthCheck.too_slow])
 settings.register_profile("ci", settings.get_profile("dev"), derandomize=True, print_blob=True)
 settings.load_profile("ci" if os.environ.get("CI") else "dev")

@@ -24,6 +24,8 @@ CIRCLE = 1 << 64
 
 #: Sums of the left half in a bucket: their bitmap and buffers then fit the second-level cache.
 _BUCKET = 80_000
+#: Least mean number of sums that a stream gives to a bucket; with fewer, finding the places costs more than the sums.
+_RUN = 12
 #: Bits of the bitmap for each sum of the left half, between this number and twice as many.
 _SPARSITY = 8
 #: The table that thins out the survivors has 2 to this power bits.
@@ -100,7 +102,9 @@ class _Side:
             raise ContradictionError(f"matching: {emitted} sums were compared where {there} lie")
 
 
-def join_range(left: Half, right: Half, low: int, high: int, slack: int, most: int, deadline: float) -> Joined:
+def join_range(
+    left: Half, right: Half, low: int, high: int, slack: int, most: int, room: int, deadline: float
+) -> Joined:
     """Compare the sums of both halves that lie from ``low`` to ``high`` − 1.
 
     Args:
@@ -111,6 +115,7 @@ def join_range(left: Half, right: Half, low: int, high: int, slack: int, most: i
             the next range.
         slack: less than 2^20.
         most: largest number of survivors of a half to keep; beyond it the join ends.
+        room: largest number of sums of a half in a bucket that memory holds; beyond it the join ends.
         deadline: value of `time.monotonic` at which it ends.
 
     About 1.8 ns a sum.
@@ -121,7 +126,8 @@ def join_range(left: Half, right: Half, low: int, high: int, slack: int, most: i
     kernels: Any = import_module("solverkit.engines._matching_kernels")  # numba loads only when it is used
 
     share = left.count() * (high - low) // CIRCLE + 1
-    buckets = max(-(-share // _BUCKET), -(-(high - low) // _WIDEST))
+    bucket = max(_BUCKET, _RUN * len(left.base))
+    buckets = max(-(-share // bucket), -(-(high - low) // _WIDEST))
     width = -(-(high - low) // buckets)
     # A cell of the bitmap is marked with a chance of 1/16 to 1/8, and ±slack spans two cells at most.
     shift = ((high - low) // (share * _SPARSITY)).bit_length() - 1
@@ -167,6 +173,9 @@ def join_range(left: Half, right: Half, low: int, high: int, slack: int, most: i
                 side.enlarge_pool()
         if len(sides[0].pool) > most:
             reason = f"more than {most} sums have near partners"
+            break
+        if len(sides[0].buffer) > room:
+            reason = f"more than {room} sums in a bucket need more memory"
             break
     emitted = int(state[kernels.EMITTED_LEFT]), int(state[kernels.EMITTED_RIGHT])
     for side, number in zip(sides, emitted, strict=True):

@@ -119,7 +119,20 @@ def narrow_classes(start, stop, cut, tables, scalars, small, flags):
                 before = c
                 while e < total and c <= size - _LANES:
                     c += narrow_leaf(
-                        entries_at, slopes_at, shifts_at, e, ids_at, values_at, c, label, m1, qa, u0, m2, floor, geometry
+                        entries_at,
+                        slopes_at,
+                        shifts_at,
+                        e,
+                        ids_at,
+                        values_at,
+                        c,
+                        label,
+                        m1,
+                        qa,
+                        u0,
+                        m2,
+                        floor,
+                        geometry,
                     )
                     e += _LANES
                 started += c - before

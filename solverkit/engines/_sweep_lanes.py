@@ -151,7 +151,9 @@ class _Lanes:
         """Return the mask of two-limb values that are at least the floor."""
         b = self.b
         above = b.icmp_signed(">", high, self.same(floor_high))
-        level = b.and_(b.icmp_signed("==", high, self.same(floor_high)), b.icmp_unsigned(">=", low, self.same(floor_low)))
+        level = b.and_(
+            b.icmp_signed("==", high, self.same(floor_high)), b.icmp_unsigned(">=", low, self.same(floor_low))
+        )
         return b.or_(above, level)
 
     def continuation(self, entries, index, geometry):
@@ -352,7 +354,23 @@ def narrow_leaf(typing, entries, slopes, shifts, e, ids, values, k, label, strid
 
 @intrinsic
 def broad_leaf(
-    typing, entries, slopes, shifts, e, ids, lows, highs, k, label, stride, qa, u_low, u_high, depth, floor_high, geometry
+    typing,
+    entries,
+    slopes,
+    shifts,
+    e,
+    ids,
+    lows,
+    highs,
+    k,
+    label,
+    stride,
+    qa,
+    u_low,
+    u_high,
+    depth,
+    floor_high,
+    geometry,
 ):
     """Append the candidates of eight continuations to a two-limb batch at place k; return how many were kept."""
 

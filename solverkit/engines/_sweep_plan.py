@@ -108,9 +108,7 @@ def _filled(values: NDArray[Any], kind: Any, padding: int = 0) -> NDArray[Any]: 
 def _masks(residues: Residues, first: int) -> NDArray[np.uint64]:
     """Return, for each residue r of a place, the bit mask of the c for which r + c·2^first is allowed."""
     modulus, step = residues.modulus, 1 << first
-    words = [
-        sum(1 << c for c in range(modulus) if residues.allowed[(r + c * step) % modulus]) for r in range(modulus)
-    ]
+    words = [sum(1 << c for c in range(modulus) if residues.allowed[(r + c * step) % modulus]) for r in range(modulus)]
     return np.array(words, np.uint64)
 
 

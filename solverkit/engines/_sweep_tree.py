@@ -66,7 +66,13 @@ class Classes:
 
 
 def surviving(
-    multiplier: int, offset: int, fewest: tuple[int, ...], depth: int, most: int, charges: NDArray[np.int64], budget: int
+    multiplier: int,
+    offset: int,
+    fewest: tuple[int, ...],
+    depth: int,
+    most: int,
+    charges: NDArray[np.int64],
+    budget: int,
 ) -> Classes:
     """Return the classes mod 2^depth all of whose prefixes have at least ``fewest[j]`` odd steps.
 
@@ -140,5 +146,7 @@ def continuations(multiplier: int, offset: int, depth: int) -> Continuations:
         beta = np.where(parity, multiplier * beta + (1 << j), beta)
         odd = odd + parity
     powers = [multiplier**a for a in range(depth + 1)]
-    shift = tuple((powers[a] * s + offset * b) >> depth for s, (a, b) in enumerate(zip(odd.tolist(), beta.tolist(), strict=True)))
+    shift = tuple(
+        (powers[a] * s + offset * b) >> depth for s, (a, b) in enumerate(zip(odd.tolist(), beta.tolist(), strict=True))
+    )
     return Continuations(depth, odd, shift, before, parities)

@@ -26,8 +26,8 @@ __all__ = ["ENGINE", "Census", "PrimitiveCycle", "Share", "offset_counts", "prim
 _LONGEST = 60_000
 _MOST_PIECES = 1000
 _HIT_BYTES = 300
-#: Frames with at most this many words are kept for other offsets: 32 of them at most, 20 MiB each.
-_KEPT_WORDS = 1 << 17
+#: Frames with at most this many words are kept for other offsets: 32 of them at most, 5 MiB each.
+_KEPT_WORDS = 1 << 15
 
 # Measured on one core; seconds.
 _START = 0.001

@@ -37,6 +37,8 @@ __all__ = ["ENGINE", "Matching"]
 
 #: Pairs of sums beyond which a piece ends as incomplete.
 _MOST_PAIRS = 1_000_000
+#: Sums of a half in a bucket that are never too many, whatever the memory.
+_LEAST_ROOM = 1 << 20
 _LATE = "the time given is over"
 
 
@@ -132,7 +134,8 @@ def _match(cell: Cell, chosen: Plan, piece: Piece, memory: int, found: _Found, d
         ys, zs, compared = left.whole(), right.whole(), (left.count(), right.count())
     else:
         low, high = (CIRCLE * (piece.index + i) // piece.count for i in (0, 1))
-        joined = join_range(left, right, low, high, slack(cell.odd), _MOST_PAIRS, deadline)
+        room = max(memory // 64, _LEAST_ROOM)
+        joined = join_range(left, right, low, high, slack(cell.odd), _MOST_PAIRS, room, deadline)
         ys, zs, compared, found.reason = joined.left, joined.right, joined.emitted, joined.reason
         found.statistics["buckets"] = joined.buckets
     found.statistics.update(left=compared[0], right=compared[1])
@@ -149,7 +152,7 @@ def _match(cell: Cell, chosen: Plan, piece: Piece, memory: int, found: _Found, d
 
 
 def _halves(cell: Cell, split: Split, most: int) -> tuple[Half, Half]:
-    """Return the sums y of the words 0A and the negated sums z of the words 1B; sought are y and z that nearly agree."""
+    """Return the sums y of the words 0A and the negated sums z of the words 1B: pairs that nearly agree are sought."""
     from solverkit.engines._matching_fractions import fractions  # noqa: PLC0415
     from solverkit.engines._matching_halves import HalfWords, build  # noqa: PLC0415
 

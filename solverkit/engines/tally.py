@@ -92,7 +92,7 @@ class Tally:
     """Exact count by dynamic programming over (step, odd count, residue of β mod |D|/gcd(D, d)).
 
     Args:
-        list_at_most: a cell with more cycles reports its exact count and a sample.
+        list_at_most: a cell with more cycles reports its exact count and a sample, unless the budget says otherwise.
         sample: number of cycles in a sample.
         memory: bytes that one cell may take, unless the budget says less.
 
@@ -170,12 +170,13 @@ class Tally:
         started = time.thread_time()
         deadline = None if budget.seconds is None else time.monotonic() + budget.seconds
         memory = self.memory if budget.memory is None else min(self.memory, budget.memory)
+        list_at_most = self.list_at_most if budget.list_at_most is None else budget.list_at_most
         hits: list[Hit] = []
         totals: list[tuple[int, int, int]] = []
         reasons: list[str] = []
         for cell in piece.cells:
             try:
-                least, total = self._decide(cell, deadline, memory)
+                least, total = self._decide(cell, deadline, memory, list_at_most)
             except CapacityError as limit:
                 reasons.append(limit.reason)
                 continue
@@ -185,7 +186,9 @@ class Tally:
         seconds = time.thread_time() - started
         return PieceResult(piece, tuple(sorted(hits)), not reasons, "; ".join(reasons), tuple(totals), seconds=seconds)
 
-    def _decide(self, cell: Cell, deadline: float | None, memory: int) -> tuple[list[int], int | None]:
+    def _decide(
+        self, cell: Cell, deadline: float | None, memory: int, list_at_most: int
+    ) -> tuple[list[int], int | None]:
         """Return least elements, and the number of cycles when they are a sample."""
         if (cell.determinant > 0) != (cell.offset > 0):
             return [], None
@@ -197,7 +200,7 @@ class Tally:
         total = count_cycles(cell, deadline, memory)
         if total == 0:
             return [], None
-        if total > self.list_at_most:
+        if total > list_at_most:
             if not _bound_is_idle(cell):
                 raise CapacityError(
                     self.name, f"{total} cycles are too many to list and compare with the bound {cell.above}"

@@ -12,6 +12,7 @@ from solverkit.errors import InputError
 from solverkit.exact.bounds import EXACT_LENGTH, balanced_bound
 from solverkit.findings import Evidence
 from solverkit.registry import load, parts
+from solverkit.settle.calibration import calibrated
 
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
@@ -127,7 +128,7 @@ def plan(
                     if second is not None and cost <= confirm_seconds:
                         chosen[second.name].append(cell)
     batches = [
-        Batch(name, group, method_named(name).estimate(group))
+        Batch(name, group, calibrated(method_named(name), group))
         for name, members in chosen.items()
         for group in method_named(name).batches(members)
     ]
@@ -148,7 +149,7 @@ def _cheapest(
     best: tuple[float, Method | None] = (inf, None)
     for method in methods:
         if (method.name, cell) not in failed and method.refusal(cell) is None:
-            cost = method.estimate((cell,))
+            cost = calibrated(method, (cell,))
             if cost < best[0]:
                 best = (cost, method)
     return best
@@ -169,7 +170,7 @@ def _primary(
     takes = [c for c in ordered if sweeps and ("sweep", c) not in failed and sweeps[0].refusal(c) is None]
     swept = takes
     head: list[Cell] = []
-    best = sweeps[0].estimate(takes) if takes else inf
+    best = calibrated(sweeps[0], tuple(takes)) if takes else inf
     if takes and best > 0.05:
         spent, cut = 0.0, 0
         for i, cell in enumerate(takes[:_MOST_CUTS]):
@@ -178,7 +179,7 @@ def _primary(
             if spent >= best:
                 break
             rest = takes[i + 1 :]
-            total = spent + (sweeps[0].estimate(rest) if rest else 0.0)
+            total = spent + (calibrated(sweeps[0], tuple(rest)) if rest else 0.0)
             if total < best:
                 best, cut = total, i + 1
         head, swept = takes[:cut], takes[cut:]

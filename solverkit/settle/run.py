@@ -12,7 +12,8 @@ from solverkit.errors import DossierError
 from solverkit.findings import CellFinding, Cycle, Evidence, Verdict
 from solverkit.ledger.ledger import Ledger, batch_key
 from solverkit.methods import LIST_AT_MOST, Budget, merged
-from solverkit.settle.choice import CONFIRM_SECONDS, Batch, method_named, plan
+from solverkit.settle.calibration import calibrated, factors, measure
+from solverkit.settle.choice import CONFIRM_SECONDS, Batch, default_methods, method_named, plan
 from solverkit.settle.pool import Order, executor, run_orders, usable_cores
 from solverkit.settle.regions import RegionFinding, RegionWork, conclude_region, region_work
 from solverkit.settle.triage import Criterion, Triage, triage
@@ -31,7 +32,8 @@ _PIECE_SECONDS = 4.0
 _ORDER_SECONDS = 0.5
 _ORDER_PIECES = 64
 _SERIAL_SECONDS = 1.5
-_MOST_ROUNDS = 4
+_MOST_ROUNDS = 5
+_MEASURE_SECONDS = 10.0
 _REGION = "sweep of a region"
 
 
@@ -239,7 +241,7 @@ def _decide(cells: Sequence[Cell], state: _State, progress: Progress) -> None:
     methods = None if settings.methods is None else tuple(method_named(name) for name in settings.methods)
     wanted = set(cells)
     unfinished = [
-        Batch(method, members, method_named(method).estimate(members))
+        Batch(method, members, calibrated(method_named(method), members))
         for _, method, members in state.ledger.batches()
         if method != _REGION
         and (settings.methods is None or method in settings.methods)
@@ -259,6 +261,10 @@ def _decide(cells: Sequence[Cell], state: _State, progress: Progress) -> None:
             confirm_seconds=settings.budget or CONFIRM_SECONDS,
             names_done=names,
         )
+        if sum(batch.seconds for batch in chosen.batches) > _MEASURE_SECONDS and not factors():
+            # The first long run on this machine: two seconds of timing make the choice and the progress bar honest.
+            measure(methods or default_methods())
+            continue
         state.refused.update(chosen.refused)
         if not chosen.batches:
             return

@@ -12,6 +12,7 @@ from solverkit.findings import Cycle
 from solverkit.methods import Budget, Family, Hit, Piece, PieceResult
 from solverkit.registry import load
 from solverkit.solvers._isolation import SolverProcess
+from solverkit.words import lyndon_count
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -64,11 +65,17 @@ class FormulaMethod:
         return None
 
     def estimate(self, cells: Sequence[Cell]) -> float:
-        """Return seconds: encoding at about 10^6 clauses a second, then search that grows with the candidates."""
+        """Return seconds on one core.
+
+        Encoding at about 10^6 clauses a second, search that grows with the candidates, and one solution for each
+        cycle that is expected.
+        """
         seconds = 0.0
         for cell in cells:
             candidates = max(0, balanced_bound(cell) - cell.above)
+            cycles = lyndon_count(cell.length, cell.odd) * abs(cell.offset) // abs(cell.determinant)
             seconds += 0.004 + self._encoder().size(cell) * 1.2e-6 + candidates * cell.length * 2e-7
+            seconds += min(cycles, 1e15) * cell.length * 2e-5
         return seconds
 
     def batches(self, cells: Sequence[Cell]) -> list[tuple[Cell, ...]]:

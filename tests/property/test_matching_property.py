@@ -40,6 +40,7 @@ def test_every_way_lists_exactly_the_cycles(cell, way, count, bucket, memory):
         patch.object(plans, "_FEW_WORDS", few),
         patch.object(plans, "_SHORT_HALF", short),
         patch.object(buckets, "_BUCKET", bucket),
+        patch.object(buckets, "_RUN", 1),
     ):
         plans.plan.cache_clear()
         results = [ENGINE.run(Piece("matching", (cell,), i, count), Budget(memory=memory)) for i in range(count)]
@@ -87,10 +88,10 @@ def test_the_join_of_all_ranges_finds_every_near_pair(data, count, slack, bucket
     ]
     expected = {(y, z) for y in everything[0] for z in everything[1] if distance(y, z) <= slack}
     found, emitted = set(), [0, 0]
-    with patch.object(buckets, "_BUCKET", bucket):
+    with patch.object(buckets, "_BUCKET", bucket), patch.object(buckets, "_RUN", 1):
         for i in range(count):
             low, high = CIRCLE * i // count, CIRCLE * (i + 1) // count
-            joined = buckets.join_range(left, right, low, high, slack, 10**6, float("inf"))
+            joined = buckets.join_range(left, right, low, high, slack, 10**6, 10**7, float("inf"))
             ys, zs = joined.left, joined.right
             for one, other in near_pairs(ys.residues, zs.residues, slack, 10**7).tolist():
                 found.add((int(ys.residues[one]), int(zs.residues[other])))

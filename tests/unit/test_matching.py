@@ -53,6 +53,7 @@ def streamed(monkeypatch):
     monkeypatch.setattr(plans, "_FEW_WORDS", 0)
     monkeypatch.setattr(plans, "_SHORT_HALF", -1)
     monkeypatch.setattr(buckets, "_BUCKET", 50)
+    monkeypatch.setattr(buckets, "_RUN", 1)
     plans.plan.cache_clear()
     yield
     plans.plan.cache_clear()
@@ -239,6 +240,20 @@ def test_a_sum_that_is_lost_is_noticed(streamed, monkeypatch):
     monkeypatch.setattr(Half, "below", lambda half, bound: below(half, bound) + (bound > 0))
     with pytest.raises(ContradictionError, match="were compared where"):
         ENGINE.run(Piece("matching", (Cell(3, 5, 27, 17),)), Budget())
+
+
+def test_a_bucket_that_memory_does_not_hold_ends_a_piece_as_incomplete(streamed, monkeypatch):
+    monkeypatch.setattr(matching, "_LEAST_ROOM", 10)
+    make = buckets._Side.__init__
+
+    def make_tiny(side, *arguments):
+        make(side, *arguments)
+        side.buffer = side.buffer[:20]
+
+    monkeypatch.setattr(buckets._Side, "__init__", make_tiny)
+    result = ENGINE.run(Piece("matching", (Cell(3, 5, 27, 17),)), Budget(memory=1))
+    assert not result.complete
+    assert "memory" in result.reason
 
 
 def test_when_time_is_over_a_piece_is_incomplete_and_says_so(way):
