@@ -23,7 +23,7 @@ __all__ = ["CIRCLE", "Joined", "join_range"]
 CIRCLE = 1 << 64
 
 #: Sums of the left half in a bucket: their bitmap and buffers then fit the second-level cache.
-_BUCKET = 80_000
+_BUCKET = 100_000
 #: Least mean number of sums that a stream gives to a bucket; with fewer, finding the places costs more than the sums.
 _RUN = 12
 #: Bits of the bitmap for each sum of the left half, between this number and twice as many.

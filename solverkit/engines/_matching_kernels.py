@@ -44,6 +44,7 @@ _ZERO, _ONE, _SIX, _LINE = np.uint64(0), np.uint64(1), np.uint64(6), np.uint64(8
 _IN_WORD = np.uint64(63)
 _PAD, _LAST = np.uint64(PAD), np.uint64(PAD - 1)
 _AHEAD = 8  # streams; with 4 or 16 the loop is 3 and 10 % slower (k = 72)
+_BLOCK = 128  # streams of the right half whose sums are probed while they are in the cache
 _LINES = 8  # cache lines of 8 values fetched ahead: a stream gives some 30 values a bucket
 # Odd multipliers: the fractional parts of the golden ratio and of √3, times 2^64.
 _HASH, _REHASH = np.uint64(0x9E3779B97F4A7C15), np.uint64(0xBB67AE8584CAA73B)
@@ -81,16 +82,16 @@ def _seek(streams, origin):
 
 
 @njit(cache=True, nogil=True)
-def _emit(streams, origin, width, slack, buffer, filled, carry):
-    """Append the distances of all sums in the bucket to ``buffer``, and write what the next bucket needs to ``carry``.
+def _emit(streams, low, high, origin, width, slack, buffer, filled, carry, carried):
+    """Append the distances of the sums of streams ``low`` … ``high`` − 1 in the bucket to ``buffer``.
 
-    Returns the new length of the one and that of the other, or (−1, −1) when one of them is too small.
+    What the next bucket needs is appended to ``carry``. Returns the new lengths of both, or (−1, −1) when one is too
+    small.
     """
     base, first, end, values, at = streams
-    carried = 0
     room = buffer.size - PAD
     edge = width - slack
-    for i in range(base.size):
+    for i in range(low, high):
         if i + _AHEAD < base.size:
             ahead = at[i + _AHEAD]
             for line in range(_LINES):
@@ -161,11 +162,11 @@ def _mark(buffer, filled, slack, shift, cells):
 
 
 @njit(cache=True, nogil=True)
-def _probe(buffer, filled, shift, cells):
-    """Keep, at the front, the distances whose cell is marked; return their number."""
+def _probe(buffer, start, filled, shift, cells):
+    """Keep, from ``start`` on, the distances whose cell is marked; return where they end."""
     cell = _ONE << shift
-    kept = _ZERO
-    for i in range(np.uint64(filled)):
+    kept = np.uint64(start)
+    for i in range(np.uint64(start), np.uint64(filled)):
         distance = buffer[i]
         spot = (distance + cell) >> shift
         buffer[kept] = distance
@@ -227,7 +228,7 @@ def _locate(streams, origin, width, slack, buffer, filled, top, table, pool, pla
 def restart(streams, origin, slack, buffer, carry):
     """Set the streams to ``origin`` and carry the sums up to ``slack`` before it; return how many, −1 if too many."""
     _seek(streams, origin - slack)
-    _, carried = _emit(streams, origin - slack, slack, slack, buffer, 0, carry)
+    _, carried = _emit(streams, 0, streams[0].size, origin - slack, slack, slack, buffer, 0, carry, 0)
     return carried
 
 
@@ -246,16 +247,27 @@ def join(left_side, right_side, origin, width, buckets, slack, shift, fine, cell
         size >>= 1
         top -= _ONE
     for _ in range(buckets):
-        left_before, right_before = state[_CARRIED_LEFT], state[_CARRIED_RIGHT]
-        left[:left_before] = left_carry[:left_before]
-        right[:right_before] = right_carry[:right_before]
-        left_filled, left_carried = _emit(left_streams, origin, width, slack, left, left_before, left_carry)
-        right_filled, right_carried = _emit(right_streams, origin, width, slack, right, right_before, right_carry)
-        if left_filled < 0 or right_filled < 0:
+        count, number = state[_CARRIED_LEFT], state[_CARRIED_RIGHT]
+        left[:count] = left_carry[:count]
+        right[:number] = right_carry[:number]
+        left_filled, left_carried = _emit(
+            left_streams, 0, left_streams[0].size, origin, width, slack, left, count, left_carry, 0
+        )  # fmt: skip
+        if left_filled < 0:
             return FULL
+        left_emitted, right_emitted, right_carried = left_filled - count, 0, 0
         cells[:] = _ZERO
         _mark(left, left_filled, slack, shift, cells)
-        count, number = left_filled, _probe(right, right_filled, shift, cells)
+        count, number = left_filled, _probe(right, 0, number, shift, cells)
+        for low in range(0, right_streams[0].size, _BLOCK):
+            high = min(low + _BLOCK, right_streams[0].size)
+            filled, right_carried = _emit(
+                right_streams, low, high, origin, width, slack, right, number, right_carry, right_carried
+            )  # fmt: skip
+            if filled < 0:
+                return FULL
+            right_emitted += filled - number
+            number = _probe(right, number, filled, shift, cells)
         multiplier = _HASH
         for turn in range(4):
             if count == 0 or number == 0:
@@ -277,8 +289,8 @@ def join(left_side, right_side, origin, width, buckets, slack, shift, fine, cell
             if pooled_left < 0 or pooled_right < 0:
                 return CROWDED
             state[POOLED_LEFT], state[POOLED_RIGHT] = pooled_left, pooled_right
-        state[EMITTED_LEFT] += left_filled - left_before
-        state[EMITTED_RIGHT] += right_filled - right_before
+        state[EMITTED_LEFT] += left_emitted
+        state[EMITTED_RIGHT] += right_emitted
         state[_CARRIED_LEFT], state[_CARRIED_RIGHT] = left_carried, right_carried
         state[BUCKETS] += 1
         origin += width

@@ -67,8 +67,8 @@ class Plan:
         longer = max(self.split.left_count, self.split.right_count)
         if self.way is Way.SORTED:
             return longer
-        # Ten lists a half, 8 bytes a value, four times that while the second half is built; and a margin of two.
-        return max(min(longer // _STREAMS, memory // (8 * 10 * 4 * 2)), 1 << 12)
+        # Some ten lists a half, 8 bytes a value, four times that while the second half is built.
+        return max(min(longer // _STREAMS, memory // (8 * 10 * 5)), 1 << 12)
 
     def seconds_of_setup(self) -> float:
         """Return the expected time that every piece spends before its first bucket."""

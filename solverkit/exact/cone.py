@@ -201,6 +201,12 @@ class ThinCone:
             pending.append(Span(middle + 1, span.high))
             pending.append(Span(span.low, middle))
 
+    def lengths_at(self, odd: int) -> Span | None:
+        """Return the lengths of the live cells with this odd count, an interval; None when there are none."""
+        low = max(self.lengths.low, self._inner.floor(odd) + 1)
+        high = min(self.lengths.high, self._outer.floor(odd))
+        return Span(low, high) if low <= high else None
+
     def _odd_counts(self, k: int) -> range:
         """Return the x at which k is below the outer line and not below the inner one."""
         return range(max(self.odd.low, self._outer.reach(k)), min(self.odd.high, self._inner.reach(k) - 1) + 1)

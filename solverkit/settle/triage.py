@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from bisect import bisect_left, bisect_right
 from collections import Counter
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, replace
@@ -108,31 +109,63 @@ def triage(window: Window, criterion: Criterion = Criterion.BALANCED, list_limit
         window: the window.
         criterion: a cell is live when its reduced form has room above its bound by this criterion. The product bound
             is weaker and never wrong. Both are proved for every map; regions use the product bound.
-        list_limit: sides with more cells than this are counted only.
+        list_limit: when the window has more cells than this to look at, sides with more than their share are counted
+            only.
 
     Reduction comes first: a cell whose multiples of |d|/gcd(|d|, |D|) leave no room is excluded by its bound.
     """
     excluded: Counter[str] = Counter({"sign": 0, "bound": 0, "words": 0, "imprimitive": 0, "residues": 0})
     cells: list[LiveCell] = []
     regions: list[Region] = []
-    total = 0
+    sides = [
+        (side, ThinCone(side.positive_map, window.bound, window.lengths, window.odd_range)) for side in window.sides()
+    ]
+    choices = [_whole_only(window, side, cone) for side, cone in sides]
+    sizes = [cone.count() if pairs is None else len(pairs) for (_, cone), pairs in zip(sides, choices, strict=True)]
+    share = list_limit if sum(sizes) <= list_limit else list_limit // len(sides)
     shared: dict[tuple[Map, int, int], tuple[int, int | None]] = {}
-    for side in window.sides():
-        cone = ThinCone(side.positive_map, window.bound, window.lengths, window.odd_range)
+    for (side, cone), pairs, size in zip(sides, choices, sizes, strict=True):
         count = cone.count()
-        total += cone.total
         excluded["sign"] += cone.total - cone.sign_fits
         excluded["bound"] += cone.sign_fits - count
-        if count > list_limit:
+        if size > share:
             regions.append(Region(side, cone, count))
             continue
-        for length, odd in cone.cells():
+        if pairs is not None:
+            excluded["imprimitive"] += count - len(pairs)
+        for length, odd in cone.cells() if pairs is None else pairs:
             verdict = _examined(window.cell(side, length, odd), window, criterion, shared)
             if isinstance(verdict, str):
                 excluded[verdict] += 1
             else:
                 cells.append(verdict)
+    total = sum(cone.total for _, cone in sides)
     return Triage(window, criterion, tuple(cells), tuple(regions), dict(excluded), total)
+
+
+def _whole_only(window: Window, side: Side, cone: ThinCone) -> list[tuple[int, int]] | None:
+    """Return the cells under the product bound with d | D, ascending, for a primitive window; else None.
+
+    Other cells have only cycles with a factor in common with d. The lengths k are grouped by 2^k mod d, so only the
+    cells returned are looked at one by one.
+    """
+    size = abs(side.map.offset)
+    if not window.primitive or size == 1 or cone.lengths.high > EXACT_LENGTH or cone.empty_range:
+        return None
+    by_residue: dict[int, list[int]] = {}
+    power = pow(2, cone.lengths.low, size)
+    for k in cone.lengths:
+        by_residue.setdefault(power, []).append(k)
+        power = power * 2 % size
+    pairs = []
+    power = pow(side.map.multiplier, cone.odd.low, size)
+    for x in cone.odd:
+        ks = by_residue.get(power)
+        span = cone.lengths_at(x) if ks else None
+        if ks and span is not None:
+            pairs += [(k, x) for k in ks[bisect_left(ks, span.low) : bisect_right(ks, span.high)]]
+        power = power * side.map.multiplier % size
+    return sorted(pairs)
 
 
 def _examined(

@@ -1,7 +1,6 @@
 """Choice of methods, execution, verdicts."""
 
 import json
-import multiprocessing
 import os
 import signal
 import subprocess
@@ -58,6 +57,22 @@ class TestTriage:
         (region,) = counted.regions
         assert region.count == listed.live + listed.excluded["words"]
         assert counted.first_live() == listed.first_live() == (1, 1)
+
+    def test_primitive_windows_keep_what_the_full_window_keeps_undivided(self):
+        """The shortcut through residues against a look at every cell."""
+        for map_ in (Map(3, 5), Map(3, -55), Map(5, 21), Map(7, -9), Map(3, 1)):
+            window = Window((map_,), Span(2, 60), Span(2, 40), above=3, signs=BOTH)
+            whole = [live for live in triage(window).cells if abs(live.reduction.factor) == 1]
+            told = triage(replace(window, primitive=True))
+            assert list(told.cells) == whole
+            assert sum(told.excluded.values()) + told.live == told.total
+
+    def test_many_maps_share_the_limit(self):
+        window = Window(tuple(Map(3, d) for d in (1, 5, 35)), Span(1, 40))
+        told = triage(window, list_limit=600)
+        assert {region.side.map.offset for region in told.regions} == {5, 35}
+        assert {live.cell.offset for live in told.cells} == {1}
+        assert sum(told.excluded.values()) + told.live == told.total
 
     def test_primitive_windows_leave_out_cells_that_only_have_multiples(self):
         window = Window((Map(3, 5),), Span(2, 2), primitive=True)
@@ -296,7 +311,6 @@ def test_killed_at_any_moment_a_run_goes_on_to_the_same_result(tmp_path):
     final = _complete_lists(tmp_path / "killed" / "ledger.sqlite")
     for earlier in recorded:
         assert earlier.items() <= final.items()
-    assert multiprocessing.active_children() == []
 
 
 def _complete_lists(path):

@@ -120,7 +120,11 @@ def test_any_offset_up_to_a_bound_means_both_signs():
     assert window.maps == tuple(Map(3, d) for d in range(-5, 6, 2))
     table = {"map": {"multiplier": 3, "offsets": "any", "offsets_at_most": 6}, "cycle": {"lengths": 5}}
     assert window_from_table(table) == window
-    for wrong in ({"map": ["3,any"]}, {"map": ["3,1"], "map.offsets_at_most": "6"}, {"map": ["3,any"], "map.offsets_at_most": "0"}):
+    for wrong in (
+        {"map": ["3,any"]},
+        {"map": ["3,1"], "map.offsets_at_most": "6"},
+        {"map": ["3,any"], "map.offsets_at_most": "0"},
+    ):
         with pytest.raises(InputError, match="offsets-at-most"):
             window_from_table({}, wrong | {"cycle.lengths": "5"})
 
