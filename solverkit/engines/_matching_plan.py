@@ -30,13 +30,14 @@ _MOST_LENGTH = 5_000
 #: Expected cycles beyond which listing them is no use.
 _MANY_CYCLES = 100_000
 
-# Seconds, on one core of 2025; the join measured at k = 64 … 76.
+# Seconds, on one core of 2025; the join measured at k = 60 … 80, where it slows down as the lists outgrow the caches.
 _PER_WORD = 12e-6
 _PER_SORTED = 150e-9
 _PER_STREAMED = 1.9e-9
+_SLOWER = 0.12
 _PER_LISTED = 25e-9
 _START = 0.1
-_PER_HIT = 250e-6
+_PER_HIT = 100e-6
 
 
 class Way(StrEnum):
@@ -78,7 +79,10 @@ class Plan:
         """Return the expected time of all pieces without set-up."""
         if self.split is None:
             return _PER_WORD * (self.words + 1)
-        return (_PER_STREAMED if self.way is Way.STREAMED else _PER_SORTED) * self.split.elements
+        elements = self.split.elements
+        if self.way is Way.SORTED:
+            return _PER_SORTED * elements
+        return _PER_STREAMED * elements * (1 + _SLOWER * max(0, elements.bit_length() - 32))
 
     def count(self, seconds: float) -> int:
         """Return into how many pieces of about ``seconds`` to cut; set-up stays below a quarter of each."""

@@ -229,7 +229,7 @@ def broad_classes(start, stop, cut, tables, scalars, small, flags):
 
 
 @njit(cache=True, nogil=True)
-def ledger_classes(start, stop, cut, tables, extra, scalars, large, flags):
+def ledger_classes(start, stop, cut, tables, extra, scalars, ceilings, large, flags):
     """Sweep classes of a block in two limbs with ledgers, for maps whose orbits mostly grow.
 
     Args:
@@ -238,7 +238,8 @@ def ledger_classes(start, stop, cut, tables, extra, scalars, large, flags):
         cut: geometry of the block.
         tables: as in `narrow_classes`.
         extra: (begin, spent, starts): first entry of each class, units it spent, ledger of each entry.
-        scalars: (offset, floor_low, floor_high, budget, cap, limit_high, passes).
+        scalars: (offset, floor_low, floor_high, budget, cap, limit_high).
+        ceilings: for each pass of eight steps, the largest upper limb from which a cycle can still return.
         large: the macro-step table of 80 uint64.
         flags: uint64[FLAGS], receives candidates minus base.
 
@@ -248,7 +249,7 @@ def ledger_classes(start, stop, cut, tables, extra, scalars, large, flags):
     m1, m2, height, blocks, base_mod, modulus, reciprocal = cut
     residue, odd, beta, count, powers, inverse, masks, entries, slopes, shifts = tables
     begin, spent, starts = extra
-    offset, floor_low, floor_high, budget, cap, limit_high, passes = scalars
+    offset, floor_low, floor_high, budget, cap, limit_high = scalars
     ids, ledgers = np.empty(LEDGER_BATCH + 16, np.uint64), np.empty(LEDGER_BATCH + 16, np.uint64)
     lows, highs = np.empty(LEDGER_BATCH + 16, np.uint64), np.empty(LEDGER_BATCH + 16, np.uint64)
     ids_at, lows_at, highs_at = _U(ids.ctypes.data), _U(lows.ctypes.data), _U(highs.ctypes.data)
@@ -281,7 +282,7 @@ def ledger_classes(start, stop, cut, tables, extra, scalars, large, flags):
                     e += _LANES
                 started += c - before
             if ended or c > size - _LANES:
-                for _ in range(passes):
+                for ceiling in ceilings:
                     for i in range(c, (c + _U(7)) // _LANES * _LANES):
                         highs[i], ledgers[i] = _ZERO, _TOP
                     i, k = _ZERO, _ZERO
@@ -294,8 +295,9 @@ def ledger_classes(start, stop, cut, tables, extra, scalars, large, flags):
                                     nf += _ONE
                                     highs[i + _U(lane)], ledgers[i + _U(lane)] = _ZERO, _TOP
                         k += ledger_step(
-                            ids_at, lows_at, highs_at, ledgers_at, i, k, large_at, floor_low, floor_high, budget, cap
-                        )
+                            ids_at, lows_at, highs_at, ledgers_at, i, k, large_at, floor_low, floor_high, budget, cap,
+                            ceiling,
+                        )  # fmt: skip
                         i += _LANES
                     c = k
                 for i in range(c):

@@ -19,7 +19,7 @@ if TYPE_CHECKING:
     from solverkit.engines._sweep_plan import Block, Tables
     from solverkit.engines._sweep_residues import Residues
 
-__all__ = ["fits", "survivors"]
+__all__ = ["survivors"]
 
 #: Passes of twelve (or eight) steps after which a candidate that never dropped is looked at exactly.
 _PASSES = 96
@@ -27,15 +27,7 @@ _WORD = (1 << 64) - 1
 _U = np.uint64
 #: Continuations tried between two looks at the clock: some tenths of a second.
 _SLICE = 1 << 26
-_FREE = Allowance((1 << 30) - 1, 32, 1 << 62, 1 << 20)
-
-
-def fits(multiplier: int, offset: int, block: Block) -> bool:
-    """Tell whether the kernels' words hold what a block of this map meets, whatever its classes."""
-    depth = block.first + block.second
-    # After m steps a value is at most (n + |d|)·(q/2)^m·2; its upper limb is multiplied by q^m2 at most.
-    bound = (block.end + abs(offset) + 1) * multiplier**depth >> depth - 1
-    return bound < 1 << 93 and abs(offset) * multiplier**4 < 1 << 58 and multiplier**4 < 1 << 32
+_FREE = Allowance((1 << 30) - 1, 32, 1 << 62, 1 << 62, 1 << 20)
 
 
 def survivors(
@@ -61,8 +53,7 @@ def survivors(
 
     Each item comes after some tenths of a second of work, so that the caller can look at the clock.
     """
-    depth = block.first + block.second
-    fewest = fewest_odd(multiplier, offset, max(1, block.base), depth)
+    fewest = fewest_odd(multiplier, offset, max(1, block.base), block.depth)
     small = macro_table(multiplier, offset) if most is None else None
     if small is not None:
         tables = plain_tables(multiplier, offset, fewest, block.first, block.second, residues)
@@ -70,18 +61,30 @@ def survivors(
         tables = ledger_tables(multiplier, offset, fewest, block.first, block.second, residues, most or _FREE)
     flags = aligned(kernels.FLAGS, np.uint64)
     cut = (
-        _U(block.first), _U(block.second), _U(block.base >> block.first), _U(1),
+        _U(block.first), _U(block.second), _U(block.base >> block.first), _U(block.repeat),
         _U(block.base % tables.modulus), _U(tables.modulus), _U((1 << 24) // tables.modulus + 1),
     )  # fmt: skip
     for low, high, kernel in _parts(multiplier, offset, block, tables, small, most, cut, flags):
         place = low
         while place < high:
             before = int(tables.cumulated[place - 1]) if place else 0
-            stop = max(place + 1, int(np.searchsorted(tables.cumulated, before + _SLICE)))
+            stop = max(place + 1, int(np.searchsorted(tables.cumulated, before + max(1, _SLICE // block.repeat))))
             count, place, tried, started = (int(part) for part in kernel(place, min(stop, high)))
             counters["tried"] = counters.get("tried", 0) + tried
             counters["started"] = counters.get("started", 0) + started
             yield flags[:count]
+
+
+def _ceilings(block: Block, most: Allowance | None) -> NDArray[np.uint64]:
+    """Return, for each pass of eight steps, the largest upper limb from which an orbit can still return.
+
+    A value v > n·2^r with r steps left never returns to n, since T(v) ≥ v/2 above a least element (see `closes`).
+    All passes end before the shortest cycle does: a ledger holds for one round only.
+    """
+    if most is None:
+        return np.full(_PASSES, 1 << 62, np.uint64)
+    ends = range(block.depth + 8, most.shortest, 8)
+    return np.array([min(1 << 62, (block.end << most.longest - end) >> 32) for end in ends], np.uint64)
 
 
 def _parts(
@@ -101,15 +104,17 @@ def _parts(
         entries = macro_entries(multiplier, offset)
         large = aligned(len(entries), np.uint64)
         large[:] = entries
-        passes = _PASSES if most is None else (most.shortest - 1 - block.first - block.second) // 8
         budget = most or _FREE
+        ceilings = _ceilings(block, most)
         scalars = (
             signed, _U(floor & 0xFFFFFFFF), _U(floor >> 32), _U(budget.budget), _U(cap(budget.ratio)),
-            _U((1 << 61) // multiplier**8 << 8), passes,
+            _U((1 << 61) // multiplier**8 << 8),
         )  # fmt: skip
 
         def with_ledger(place: int, stop: int) -> tuple[int, ...]:
-            return kernels.ledger_classes(place, stop, cut, tables.arrays, tables.extra, scalars, large, flags)  # type: ignore[no-any-return]
+            return kernels.ledger_classes(
+                place, stop, cut, tables.arrays, tables.extra, scalars, ceilings, large, flags
+            )  # type: ignore[no-any-return]
 
         return [(0, tables.classes, with_ledger)]
     table, bias = small

@@ -296,17 +296,18 @@ def broad_step(typing, ids, lows, highs, i, k, table, bias, floor_high):
 
 
 @intrinsic
-def ledger_step(typing, ids, lows, highs, ledgers, i, k, table, floor_low, floor_high, budget, cap):
+def ledger_step(typing, ids, lows, highs, ledgers, i, k, table, floor_low, floor_high, budget, cap, ceiling):
     """Advance eight two-limb values and their ledgers by eight steps.
 
-    Keeps those that are at least the floor and within the budget after four and after eight steps. ``table`` holds
+    Keeps those that are at least the floor after four and after eight steps, and then within the budget and with an
+    upper limb of at most ``ceiling``. ``table`` holds
     16 each of Q, t, charge without relief, relief, growth, as 64-bit entries; a ledger is spent·2^32 + ratio, the
     ratio a multiple of 2^(−28) that is never too small (see `_sweep_ledger`).
     """
 
     def code(context, builder, signature, arguments):
         b, lanes = builder, _Lanes(builder)
-        ids, lows, highs, ledgers, i, k, table, floor_low, floor_high, budget, cap = arguments
+        ids, lows, highs, ledgers, i, k, table, floor_low, floor_high, budget, cap, ceiling = arguments
         label, low, high, ledger = (lanes.load(part, i) for part in (ids, lows, highs, ledgers))
         slope, shift, charge, relief, growth = (lanes.large_table(table, 128 * part) for part in range(5))
         spent, ratio = b.lshr(ledger, lanes.same(32)), b.and_(ledger, lanes.same(_LOW))
@@ -321,12 +322,13 @@ def ledger_step(typing, ids, lows, highs, ledgers, i, k, table, floor_low, floor
             low, high = lanes.jump(low, high, 4, slope(low), shift(low))
             mask = b.and_(mask, lanes.at_least(low, high, floor_low, floor_high))
         mask = b.and_(mask, b.icmp_unsigned("<=", spent, lanes.same(budget)))
+        mask = b.and_(mask, b.icmp_signed("<=", high, lanes.same(ceiling)))
         ledger = b.or_(b.shl(spent, lanes.same(32)), ratio)
         for value, array in ((label, ids), (low, lows), (high, highs), (ledger, ledgers)):
             lanes.store_kept(value, mask, array, k)
         return lanes.number(mask)
 
-    return _signature(11), code
+    return _signature(12), code
 
 
 @intrinsic

@@ -56,12 +56,14 @@ class Allowance:
         budget: most units that the first ``shortest`` steps of a cycle spend.
         ratio: κ in units of 1/32, rounded up.
         shortest: least length of a cell that reaches the block.
+        longest: largest length of such a cell.
         most_odd: largest odd count of such a cell.
     """
 
     budget: int
     ratio: int
     shortest: int
+    longest: int
     most_odd: int
 
 
@@ -94,7 +96,8 @@ def allowance(cells: Iterable[Cell], floor: int) -> Allowance | None:
                 ratio = max(ratio, int(excess.upper().ceil().unique_fmpz()))
     if ratio > _MOST_RATIO * _GRAIN or budget >= 1 << 30:
         return None
-    return Allowance(budget, ratio, min(cell.length for cell in there), there[0].odd)
+    lengths = [cell.length for cell in there]
+    return Allowance(budget, ratio, min(lengths), max(lengths), there[0].odd)
 
 
 def _relief(multiplier: int, ratio: int, position: int, odd: int, scale: int) -> int:

@@ -17,12 +17,22 @@ if TYPE_CHECKING:
     from solverkit.engines._sweep_ledger import Allowance
     from solverkit.engines._sweep_residues import Residues
 
-__all__ = ["LEAST_START", "Block", "Tables", "aligned", "block_at", "ledger_tables", "macro_table", "plain_tables"]
+__all__ = [
+    "LEAST_START",
+    "Block",
+    "Tables",
+    "aligned",
+    "block_at",
+    "fits",
+    "ledger_tables",
+    "macro_table",
+    "plain_tables",
+]
 
 #: Candidates below this are not worth tables: a plain pass over all of them takes milliseconds.
 LEAST_START = 1 << 22
 _LEAST_DEPTH, _MOST_DEPTH = 20, 38
-_MOST_FIRST, _MOST_SECOND = 22, 16
+_MOST_FIRST, _MOST_SECOND, _MOST_REPEAT = 22, 16, 16
 _SLOPE_BITS = 46
 _WORD = (1 << 64) - 1
 _PADDING = 8
@@ -30,41 +40,76 @@ _PADDING = 8
 
 @dataclass(frozen=True, slots=True)
 class Block:
-    """The integers base + [0, 2^(first + second)), swept together.
+    """The integers base + [0, repeat·2^(first + second)), swept together.
 
     Args:
         base: a multiple of 2^first.
         first: m1, depth of the residue tree.
         second: m2, depth of the continuations.
+        repeat: how often the residues mod 2^(m1 + m2) are run through.
     """
 
     base: int
     first: int
     second: int
+    repeat: int = 1
+
+    @property
+    def depth(self) -> int:
+        """Steps that the tables take."""
+        return self.first + self.second
 
     @property
     def end(self) -> int:
         """One past the last integer."""
-        return self.base + (1 << (self.first + self.second))
+        return self.base + (self.repeat << self.depth)
+
+
+def _most_steps(multiplier: int, bits: int) -> int:
+    """Return the largest e with q^e < 2^bits, or 0."""
+    steps = 0
+    while bits > 0 and multiplier ** (steps + 1) < 1 << bits:
+        steps += 1
+    return steps
+
+
+def fits(multiplier: int, offset: int, block: Block) -> bool:
+    """Tell whether the kernels' words hold what a block of this map meets, whatever its classes.
+
+    After m steps a value is below 2·(n + |d|)·(q/2)^m in absolute value. The upper limb of a value after m1 steps,
+    divided by 2^m2, is multiplied by at most q^m2: 2^93 keeps that within 62 bits.
+    """
+    bound = (block.end + abs(offset) + 1) * multiplier**block.depth >> block.depth - 1
+    return bound < 1 << 93 and abs(offset) * multiplier**4 < 1 << 58 and multiplier**4 < 1 << 32
 
 
 def block_at(multiplier: int, offset: int, start: int, last: int, deepest: int = _MOST_DEPTH) -> Block | None:
     """Return the block that begins at or just below ``start``, or None when a plain pass serves better.
 
-    It is at most a quarter of its start long, so that one floor fits all its candidates, and ends beyond ``last``
-    only when little is left. Depths are cut so that q^m1, and |d|·q^m2, stay within the kernels' words.
+    Args:
+        multiplier: q.
+        offset: d.
+        start: first candidate.
+        last: last candidate wanted; the block ends beyond it only when little is left.
+        deepest: most steps that the tables may take.
+
+    The block is at most a quarter of its start long, so that one floor fits all its candidates. Depths are cut so
+    that q^m1, q^m2 and |d|·q^m2 stay within the kernels' words.
     """
     left = last - start + 1
-    depth = min(_MOST_DEPTH, deepest, start.bit_length() - 3, left.bit_length() - (left > 1 << 27))
-    if start < LEAST_START or depth < _LEAST_DEPTH or (depth > left.bit_length() - 1 and left < 1 << 19):
+    whole = min(start.bit_length() - 3, left.bit_length() - (left > 1 << 27))
+    second_most = min(_MOST_SECOND, _most_steps(multiplier, 60 - abs(offset).bit_length()), _most_steps(multiplier, 31))
+    first_most = min(_MOST_FIRST, _most_steps(multiplier, _SLOPE_BITS))
+    if start < LEAST_START or abs(offset) >= 1 << 56:
         return None
-    bits = multiplier.bit_length()
-    steps_of_shift = (60 - abs(offset).bit_length()) // bits
-    second = min(_MOST_SECOND, depth // 2, steps_of_shift, 31 // bits)
-    first = min(_MOST_FIRST, depth - second, _SLOPE_BITS // bits)
-    if second < 4 or first < 4 or abs(offset) >= 1 << 60:
-        return None
-    return Block(start >> first << first, first, second)
+    for depth in range(min(_MOST_DEPTH, deepest, whole, first_most + second_most), _LEAST_DEPTH - 1, -1):
+        second = min(second_most, depth // 2)
+        first = min(first_most, depth - second)
+        repeat = max(1, min(_MOST_REPEAT, left >> first + second, start >> first + second + 3))
+        block = Block(start >> first << first, first, second, repeat)
+        if fits(multiplier, offset, block):
+            return block if second >= 4 else None
+    return None
 
 
 @dataclass(frozen=True, slots=True)

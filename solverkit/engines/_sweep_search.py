@@ -114,7 +114,7 @@ class Search:
         rows = np.zeros((len(labels), 4), np.int64)
         count = wide.follow_all(
             labels, np.uint64(base >> 64), np.uint64(base & _WORD), np.uint64(q), d, steps,
-            steps if falling else odd, np.uint64((1 << 61) // q), rows,
+            steps if falling else odd, np.uint64((1 << 61) // q), falling, rows,
         )  # fmt: skip
         self._count("examined", len(labels))
         for index, state, k, x in rows[:count].tolist():
@@ -126,7 +126,7 @@ class Search:
             if falling:
                 if cycle := reached(q, d, n, tail, length):
                     self.found.add(cycle)
-            elif state == wide.LEFT and (end := closes(q, d, n, length, odd)):
+            elif end := closes(q, d, n, length, odd):
                 self.found.add((n, *end))
 
     def _plainly(self, first: int, last: int) -> Generator[int, None, int]:

@@ -76,8 +76,8 @@ def follow(high, low, q, d, length, odd, limit):
 
 
 @njit(cache=True, nogil=True)
-def follow_all(labels, base_high, base_low, q, d, length, odd, limit, rows):
-    """Follow the orbits of base + label; keep in ``rows`` those that are not dropped.
+def follow_all(labels, base_high, base_low, q, d, length, odd, limit, keep_open, rows):
+    """Follow the orbits of base + label; keep in ``rows`` those that closed, left, or (if wanted) used up their steps.
 
     Args:
         labels: uint64 array.
@@ -88,6 +88,7 @@ def follow_all(labels, base_high, base_low, q, d, length, odd, limit, rows):
         length: most steps.
         odd: most odd steps.
         limit: as in `follow`.
+        keep_open: whether orbits that used up their steps are kept.
         rows: int64[len(labels), 4]; row i becomes (index of the label, what became of it, steps, odd steps).
 
     Returns:
@@ -98,7 +99,7 @@ def follow_all(labels, base_high, base_low, q, d, length, odd, limit, rows):
         low = base_low + labels[index]
         high = base_high + (_ONE if low < base_low else _U(0))
         state, done, odds = follow(high, low, q, d, length, odd, limit)
-        if state != DROPPED:
+        if state == CLOSED or state == LEFT or (keep_open and state == OPEN):
             rows[count, 0], rows[count, 1], rows[count, 2], rows[count, 3] = index, state, done, odds
             count += 1
     return count

@@ -135,7 +135,7 @@ def _match(cell: Cell, chosen: Plan, piece: Piece, memory: int, found: _Found, d
     else:
         low, high = (CIRCLE * (piece.index + i) // piece.count for i in (0, 1))
         room = max(memory // 64, _LEAST_ROOM)
-        joined = join_range(left, right, low, high, slack(cell.odd), _MOST_PAIRS, room, deadline)
+        joined = join_range(left, right, low, high, slack(cell.odd), 4 * _MOST_PAIRS, room, deadline)
         ys, zs, compared, found.reason = joined.left, joined.right, joined.emitted, joined.reason
         found.statistics["buckets"] = joined.buckets
     found.statistics.update(left=compared[0], right=compared[1])

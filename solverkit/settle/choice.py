@@ -71,7 +71,7 @@ class Plan:
     """What is to be run, and what can't be.
 
     Args:
-        batches: costliest first.
+        batches: first methods before second ones, each costliest first.
         refused: cell -> why no method takes it.
     """
 
@@ -102,6 +102,7 @@ def plan(
     """
     refused: dict[Cell, str] = {}
     chosen: dict[str, list[Cell]] = defaultdict(list)
+    confirming: dict[str, list[Cell]] = defaultdict(list)
     pool = tuple(methods) if methods is not None else default_methods()
     if methods is not None:
         for cell in cells:
@@ -126,14 +127,17 @@ def plan(
                     others = [m for m in pool if m.family not in families]
                     cost, second = _cheapest(cell, others, failed)
                     if second is not None and cost <= confirm_seconds:
-                        chosen[second.name].append(cell)
+                        confirming[second.name].append(cell)
+    return Plan((*_batches(chosen), *_batches(confirming)), refused)
+
+
+def _batches(chosen: Mapping[str, list[Cell]]) -> list[Batch]:
     batches = [
         Batch(name, group, calibrated(method_named(name), group))
         for name, members in chosen.items()
         for group in method_named(name).batches(members)
     ]
-    batches.sort(key=lambda batch: (-batch.seconds, batch.method, batch.cells))
-    return Plan(tuple(batches), refused)
+    return sorted(batches, key=lambda batch: (-batch.seconds, batch.method, batch.cells))
 
 
 def _by_map(cells: Sequence[Cell]) -> dict[Map, list[Cell]]:

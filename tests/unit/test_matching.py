@@ -17,6 +17,7 @@ from solverkit.engines._matching_substitution import substituted
 from solverkit.engines.matching import ENGINE
 from solverkit.errors import CapacityError, ContradictionError
 from solverkit.methods import Budget, Hit, Piece, merged
+from solverkit.registry import load
 from solverkit.window import Cell, Sign
 from solverkit.words import beta, lyndon_words, rotations
 from tests.published import published
@@ -303,3 +304,16 @@ def test_a_cell_of_the_wrong_sign_is_answered_at_once():
     cell = Cell(3, -1, 84, 52)
     assert ENGINE.estimate([cell]) < 0.01
     assert least_elements(cell) == []
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize(
+    ("cell", "number"), [(Cell(3, 47351, 60, 37), 23), (Cell(3, 2495, 64, 40), 2), (Cell(3, 1041197, 68, 42), 367)]
+)
+def test_long_cells_of_real_size_agree_with_the_sweep(cell, number):
+    sweep = load("engines", "sweep")
+    (batch,) = sweep.batches([cell])
+    (listing,) = merged(batch, [sweep.run(piece, Budget()) for piece in sweep.pieces(batch, 60.0)])
+    assert listing.complete
+    assert least_elements(cell, 2) == list(listing.least)
+    assert len(listing.least) == number
