@@ -8,20 +8,16 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from solverkit.engines._matching_substitution import modulus
+
 if TYPE_CHECKING:
     import numpy.typing as npt
 
     from solverkit.window import Cell
 
-__all__ = ["fractions", "modulus", "slack", "unit"]
+__all__ = ["fractions", "slack", "unit"]
 
 _FULL = (1 << 64) - 1
-
-
-def modulus(cell: Cell) -> int:
-    """Return D' = |D|/gcd(D, d): a word gives integers n = d·β/D exactly when D' divides β."""
-    size = abs(cell.determinant)
-    return size // gcd(size, cell.offset)
 
 
 def slack(odd: int) -> int:

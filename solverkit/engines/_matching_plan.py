@@ -8,8 +8,8 @@ from functools import lru_cache
 from math import ceil, comb, inf, isqrt
 from typing import TYPE_CHECKING
 
-from solverkit.engines._matching_fractions import modulus
 from solverkit.engines._matching_split import Split, best_split
+from solverkit.engines._matching_substitution import modulus
 from solverkit.window import Sign
 
 if TYPE_CHECKING:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from math import gcd
 from typing import TYPE_CHECKING
 
 from solverkit.methods import Hit
@@ -9,7 +10,13 @@ from solverkit.methods import Hit
 if TYPE_CHECKING:
     from solverkit.window import Cell
 
-__all__ = ["substituted"]
+__all__ = ["modulus", "substituted"]
+
+
+def modulus(cell: Cell) -> int:
+    """Return D' = |D|/gcd(D, d): a word gives integers n = d·β/D exactly when D' divides β."""
+    size = abs(cell.determinant)
+    return size // gcd(size, cell.offset)
 
 
 def substituted(cell: Cell, word: int) -> Hit | None:

@@ -13,7 +13,7 @@ from dataclasses import dataclass
 from multiprocessing import get_context
 from typing import TYPE_CHECKING, TypeVar
 
-from solverkit.errors import MissingPartError, SolverkitError
+from solverkit.errors import InputError, MissingPartError, SolverkitError
 from solverkit.methods import Budget, Piece, PieceResult
 from solverkit.settle.choice import method_named
 
@@ -73,13 +73,17 @@ def executor(jobs: int, cluster: str | None = None) -> Executor:
 
     Raises:
         MissingPartError: ``cluster`` without dask.distributed.
+        InputError: nothing answers at the address.
     """
     if cluster is not None:
         try:
             from distributed import Client  # noqa: PLC0415 - an optional part
         except ImportError:
             raise MissingPartError("dask.distributed", 'install it with: pip install "solverkit[cluster]"') from None
-        result: Executor = Client(cluster).get_executor(pure=False)
+        try:
+            result: Executor = Client(cluster).get_executor(pure=False)
+        except (OSError, ValueError, TypeError) as problem:
+            raise InputError("--cluster", cluster, f"the address of a running Dask scheduler ({problem})") from problem
         return result
     if jobs <= 1:
         return SerialExecutor()
@@ -135,18 +139,17 @@ def run_orders(orders: Iterable[Order], make: Callable[[], Executor], in_flight:
             broken = False
             for future in finished:
                 order = running.pop(future)
-                try:
+                problem = future.exception()
+                if problem is None:
                     yield future.result()
-                except BrokenProcessPool:
-                    broken = True
-                    again = Order(order.pieces, order.tries + 1)
-                    if again.tries < _TRIES:
-                        waiting.append(again)
-                    else:
-                        yield [
-                            _failed(piece, "its worker died three times", time.perf_counter())
-                            for piece, _ in order.pieces
-                        ]
+                    continue
+                broken = broken or isinstance(problem, BrokenProcessPool)
+                again = Order(order.pieces, order.tries + 1)
+                if again.tries < _TRIES:
+                    waiting.append(again)
+                else:
+                    reason = f"its worker failed three times ({type(problem).__name__}: {problem})"
+                    yield [_failed(piece, reason, time.perf_counter()) for piece, _ in order.pieces]
             if broken:
                 pool = _renewed(pool, make)
     finally:
@@ -166,4 +169,6 @@ def _end(pool: Executor) -> None:
         for process in list((getattr(pool, "_processes", None) or {}).values()):
             with suppress(OSError, ValueError):
                 process.terminate()
-    pool.shutdown(wait=False, cancel_futures=True)
+        pool.shutdown(wait=False, cancel_futures=True)
+    else:
+        pool.shutdown(wait=False)

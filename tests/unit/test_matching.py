@@ -10,10 +10,10 @@ from solverkit.engines import _matching_buckets as buckets
 from solverkit.engines import _matching_plan as plans
 from solverkit.engines import matching
 from solverkit.engines._matching_enumeration import ballot_words
-from solverkit.engines._matching_fractions import fractions, modulus, slack, unit
+from solverkit.engines._matching_fractions import fractions, slack, unit
 from solverkit.engines._matching_halves import Half, HalfWords, build
 from solverkit.engines._matching_split import Split, best_split
-from solverkit.engines._matching_substitution import substituted
+from solverkit.engines._matching_substitution import modulus, substituted
 from solverkit.engines.matching import ENGINE
 from solverkit.errors import CapacityError, ContradictionError
 from solverkit.methods import Budget, Hit, Piece, merged

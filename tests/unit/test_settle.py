@@ -268,7 +268,7 @@ def test_an_order_whose_worker_dies_runs_again_at_most_three_times(deaths, compl
     _Dying.deaths = deaths
     (results,) = run_orders([Order(((piece, Budget()),))], _Dying, 2)
     assert results[0].complete is complete
-    assert complete or "died three times" in results[0].reason
+    assert complete or "failed three times" in results[0].reason
 
 
 RUN = """
