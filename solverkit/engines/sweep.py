@@ -74,19 +74,26 @@ class Sweep:
         return [Piece(self.name, batch, i, count, (cuts[i] + 1, cuts[i + 1])) for i in range(count)]
 
     def run(self, piece: Piece, budget: Budget) -> PieceResult:
-        """Search one part; when the time is over, ``swept_to`` in the statistics tells how far it is complete."""
+        """Search one part; when the time is over, ``swept_to`` in the statistics tells how far it is complete.
+
+        With four numbers of detail, (first, last, k, x), every cycle of at most k steps, x of them odd, with its least
+        element in the part is a hit, whatever its cell; ``piece.cells`` then only names the map and the bound.
+        """
         started, worked = perf_counter(), process_time()
-        first, last = piece.detail
-        shape = _profile(piece.cells)
+        first, last, *most = piece.detail
         here = piece.cells[0]
-        search = Search(here.multiplier, here.offset, shape.low, shape.limits, shape.reaching)
+        if most:
+            length, odd = most
+            search = Search(here.multiplier, here.offset, here.above, lambda _: (length, odd), lambda _: ())
+        else:
+            shape = _profile(piece.cells)
+            search = Search(here.multiplier, here.offset, shape.low, shape.limits, shape.reaching)
         swept, reason = first - 1, ""
         for swept in search.stretch(first, last):
             if swept < last and budget.seconds is not None and perf_counter() - started > budget.seconds:
                 reason = f"the budget of {budget.seconds:g} s ended at candidate {swept}"
                 break
-        wanted = {(cell.length, cell.odd): cell.above for cell in piece.cells}
-        hits = sorted(Hit(k, x, n) for n, k, x in search.found if (k, x) in wanted and n > wanted[k, x])
+        hits = sorted(Hit(k, x, n) for n, k, x in search.found if _asked(piece, n, k, x))
         return PieceResult(
             piece,
             tuple(hits),
@@ -102,6 +109,12 @@ class Sweep:
             },
             seconds=process_time() - worked,
         )
+
+
+def _asked(piece: Piece, n: int, k: int, x: int) -> bool:
+    if len(piece.detail) > 2:
+        return n > piece.cells[0].above and k <= piece.detail[2] and x <= piece.detail[3]
+    return any((cell.length, cell.odd) == (k, x) and n > cell.above for cell in piece.cells)
 
 
 def _fits(cell: Cell, high: int) -> bool:
