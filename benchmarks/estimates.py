@@ -19,7 +19,10 @@ CASES = [
     ("sweep", Cell(3, 10007, 485, 306), None),
     ("sweep", Cell(5, 1, 1493, 643), 0),
     ("sweep", Cell(7, 1, 1603, 571), 0),
-    ("sweep", Cell(181, 1, 1327, 177), None),
+    ("sweep", Cell(5, 1000003, 137, 59), None),
+    ("sweep", Cell(7, 10000019, 73, 26), None),
+    ("sweep", Cell(3, 5077565, 27, 17), None),
+    ("sweep", Cell(3, 1000003, 485, 306), None),
     ("matching", Cell(3, 1, 70, 44), 0),
     ("matching", Cell(3, -1, 73, 47), 0),
     ("matching", Cell(5, 1, 72, 31), 0),
@@ -52,7 +55,10 @@ def main():
         within = 0.25 <= ratio <= 4 or max(estimate, measured) < 1
         wrong += not within
         text = f"({cell.multiplier}, {str(cell.offset)[:9]}, {cell.length}, {cell.odd})"
-        print(f"{name:<22}{text:<28}{estimate:>10.2f}{measured:>10.2f}{ratio:>8.2f}{'' if within else '  off'}", flush=True)
+        print(
+            f"{name:<22}{text:<28}{estimate:>10.2f}{measured:>10.2f}{ratio:>8.2f}{'' if within else '  off'}",
+            flush=True,
+        )
     if wrong:
         sys.exit(f"{wrong} estimates of over a second are off by more than a factor 4")
 

@@ -5,7 +5,7 @@ r mod 2^m1 of the residue tree; for each class the continuations that survive ar
 outlives the macro-steps is handed back: no kernel here rejects a candidate that could be a least element, and none
 decides that one is.
 """
-# mypy: disable-error-code="no-untyped-def,misc,no-any-return,untyped-decorator"
+# mypy: disable-error-code="no-untyped-def,misc,no-any-return,untyped-decorator,call-arg,var-annotated,assignment"
 # ruff: noqa: ANN001, ANN202 - numba infers the types
 
 from __future__ import annotations
@@ -96,9 +96,7 @@ def narrow_classes(start, stop, cut, tables, scalars, small, flags):
     tall_ids = np.empty(BATCH + 16, np.uint64)
     tall_low, tall_high = np.empty(BATCH + 16, np.uint64), np.empty(BATCH + 16, np.uint64)
     ids_at, values_at = _U(ids.ctypes.data), _U(values.ctypes.data)
-    tall_at, tall_low_at, tall_high_at = _U(tall_ids.ctypes.data), _U(tall_low.ctypes.data), _U(tall_high.ctypes.data)
     entries_at, slopes_at, shifts_at = _U(entries.ctypes.data), _U(slopes.ctypes.data), _U(shifts.ctypes.data)
-    small_at = _U(small.ctypes.data)
     window = (_ONE << m2) - _ONE
     size, room = _U(BATCH), _U(FLAGS - 2 * BATCH)
     floor_high = floor >> _U(32)

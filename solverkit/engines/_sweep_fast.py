@@ -112,9 +112,10 @@ def _parts(
         )  # fmt: skip
 
         def with_ledger(place: int, stop: int) -> tuple[int, ...]:
-            return kernels.ledger_classes(
+            done: tuple[int, ...] = kernels.ledger_classes(
                 place, stop, cut, tables.arrays, tables.extra, scalars, ceilings, large, flags
-            )  # type: ignore[no-any-return]
+            )
+            return done
 
         return [(0, tables.classes, with_ledger)]
     table, bias = small

@@ -240,7 +240,7 @@ def narrow_over(typing, values, i, limit):
 
 @intrinsic
 def narrow_spill(typing, ids, values, i, limit, tall_ids, tall_low, tall_high, k):
-    """Append the lanes that reach ``limit`` to a two-limb batch at place k and make them −1 here; return their number."""
+    """Append the lanes that reach ``limit`` to a two-limb batch at place k, −1 here; return their number."""
 
     def code(context, builder, signature, arguments):
         lanes = _Lanes(builder)

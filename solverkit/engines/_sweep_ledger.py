@@ -89,21 +89,29 @@ def allowance(cells: Iterable[Cell], floor: int) -> Allowance | None:
                 break
             surplus = cell.odd * per_odd - cell.length * two
             allowed = unit * (surplus if d > 0 else -surplus)
-            units = int((allowed * UNIT).upper().ceil().unique_fmpz())
+            units = _ceiling(allowed * UNIT)
             budget = max(budget, min(units, cell.odd * UNIT))
             if d < 0:
                 excess = (cell.odd * arb(q).log() - cell.length * two).exp() * _GRAIN
-                ratio = max(ratio, int(excess.upper().ceil().unique_fmpz()))
+                ratio = max(ratio, _ceiling(excess))
     if ratio > _MOST_RATIO * _GRAIN or budget >= 1 << 30:
         return None
     lengths = [cell.length for cell in there]
     return Allowance(budget, ratio, min(lengths), max(lengths), there[0].odd)
 
 
+def _ceiling(ball: arb) -> int:
+    """Return the least integer that no number in ``ball`` exceeds."""
+    integer = ball.upper().ceil().unique_fmpz()
+    if integer is None:
+        raise ArithmeticError("a ball without an upper end")
+    return int(integer)
+
+
 def _relief(multiplier: int, ratio: int, position: int, odd: int, scale: int) -> int:
     """Return ⌈scale·κ·2^position/q^odd⌉."""
     top = scale * ratio << position
-    return -(-top // (_GRAIN * multiplier**odd))
+    return -int(-top // (_GRAIN * multiplier**odd))
 
 
 @lru_cache(maxsize=64)

@@ -214,7 +214,7 @@ def plain_tables(
 def ledger_tables(
     multiplier: int, offset: int, fewest: tuple[int, ...], first: int, second: int, residues: Residues, most: Allowance
 ) -> Tables:
-    """Return the tables of a block with ledgers: for each odd count a list of continuations sorted by what they spend."""
+    """Return the tables of a block with ledgers: continuations sorted by what they spend, for each odd count."""
     fees = charges(multiplier, most.ratio, first + second)
     classes = surviving(multiplier, offset, fewest, first, most.most_odd, fees, most.budget)
     table = continuations(multiplier, offset, second)

@@ -11,6 +11,8 @@ from solverkit.engines._sweep_residues import every_element, without_tails
 if TYPE_CHECKING:
     from collections.abc import Callable, Generator, Iterator
 
+    from numpy.typing import NDArray
+
     from solverkit.engines._sweep_plan import Block
     from solverkit.window import Cell
 
@@ -102,7 +104,7 @@ class Search:
                 self._settle(block.base, labels, length, odd, residues.tail)
             yield done
 
-    def _settle(self, base: int, labels: Any, length: int, odd: int, tail: int) -> None:
+    def _settle(self, base: int, labels: NDArray[Any], length: int, odd: int, tail: int) -> None:
         """Decide candidates base + label exactly."""
         import numpy as np  # noqa: PLC0415
 

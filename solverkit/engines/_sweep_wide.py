@@ -1,5 +1,5 @@
 """Exact orbits of single candidates in 128-bit integers; what leaves them goes to Python integers."""
-# mypy: disable-error-code="no-untyped-def,misc,no-any-return,untyped-decorator,no-untyped-call"
+# mypy: disable-error-code="no-untyped-def,misc,no-any-return,untyped-decorator,no-untyped-call,call-arg"
 # ruff: noqa: ANN001, ANN202, ARG001 - numba calls these with its own objects
 
 from __future__ import annotations
@@ -99,7 +99,7 @@ def follow_all(labels, base_high, base_low, q, d, length, odd, limit, keep_open,
         low = base_low + labels[index]
         high = base_high + (_ONE if low < base_low else _U(0))
         state, done, odds = follow(high, low, q, d, length, odd, limit)
-        if state == CLOSED or state == LEFT or (keep_open and state == OPEN):
+        if state == CLOSED or state == LEFT or (keep_open and state == OPEN):  # noqa: PLR1714, SIM109 - numba has no sets
             rows[count, 0], rows[count, 1], rows[count, 2], rows[count, 3] = index, state, done, odds
             count += 1
     return count

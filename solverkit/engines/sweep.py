@@ -10,9 +10,11 @@ from functools import lru_cache
 from time import perf_counter, process_time
 from typing import TYPE_CHECKING
 
+from solverkit.engines._sweep_cost import sweep_seconds
 from solverkit.engines._sweep_ranges import Profile, cell_bound, profile
 from solverkit.engines._sweep_search import Search
 from solverkit.methods import Budget, Family, Hit, Piece, PieceResult
+from solverkit.words import lyndon_count
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -22,8 +24,8 @@ if TYPE_CHECKING:
 __all__ = ["ENGINE", "Sweep"]
 
 _LONGEST = 1e7  # seconds on one core beyond which a cell is refused
-_STEP_SECONDS = 1.1e-9
-_PYTHON_STEP_SECONDS = 1e-7
+_FEW_CELLS, _LONGEST_COUNTED = 64, 5000
+_CYCLE_SECONDS = 2e-5
 
 
 @lru_cache(maxsize=256)
@@ -49,14 +51,13 @@ class Sweep:
 
     def estimate(self, cells: Sequence[Cell]) -> float:
         """Return seconds on one core for one pass over the candidates of all ``cells``."""
-        shape = _profile(tuple(cells))
-        if not shape.candidates:
+        if not cells:
             return 0.0
-        multiplier = cells[0].multiplier
-        length, _ = shape.limits(shape.low + 1)
-        steps = 10 if multiplier == 3 else min(length, 400)
-        step = _STEP_SECONDS if _fits(cells[0], shape.high) else _PYTHON_STEP_SECONDS
-        return min(float(shape.candidates), 1e300) * steps * step
+        listed = tuple(cells)
+        seconds = sweep_seconds(listed[0].multiplier, listed[0].offset, _profile(listed))
+        if len(listed) <= _FEW_CELLS:
+            seconds += _CYCLE_SECONDS * sum(_expected(cell) for cell in listed)
+        return seconds
 
     def batches(self, cells: Sequence[Cell]) -> list[tuple[Cell, ...]]:
         """Group cells by map, sorted, without repeats."""
@@ -117,8 +118,13 @@ def _asked(piece: Piece, n: int, k: int, x: int) -> bool:
     return any((cell.length, cell.odd) == (k, x) and n > cell.above for cell in piece.cells)
 
 
-def _fits(cell: Cell, high: int) -> bool:
-    return cell.multiplier < 1 << 31 and abs(cell.offset) < 1 << 61 and high < 1 << 62
+@lru_cache(maxsize=1 << 16)
+def _expected(cell: Cell) -> float:
+    """Return about how many cycles the cell has; each costs an exact look."""
+    if cell.length > _LONGEST_COUNTED:
+        return 0.0
+    words, size = lyndon_count(cell.length, cell.odd), abs(cell.determinant)
+    return min(1e18, words * abs(cell.offset) // size) if words * abs(cell.offset) > size else 0.0
 
 
 ENGINE = Sweep()

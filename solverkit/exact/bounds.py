@@ -77,7 +77,8 @@ def _closed_form(cell: Cell) -> int:
             value = abs(arb(size) / gap)
             decided = floor_if_decided(value)
             if decided is None and cell.length <= EXACT_LENGTH and value.rad() < 1:
-                decided = int(value.mid().floor().unique_fmpz() or 0)
+                middle = value.mid().floor().unique_fmpz()
+                decided = None if middle is None else int(middle)
         if decided is not None:
             return decided
         bits *= 2  # ends: 2^(k/x) is irrational here, so the value is no integer

@@ -100,7 +100,8 @@ def test_exact_contains_no_float():
 def test_heavy_libraries_load_only_when_used(statement, unwanted):
     run = subprocess.run(
         [sys.executable, "-c", f"{statement}\nimport sys; print(*sorted(m.split('.')[0] for m in sys.modules))"],
-        cwd=ROOT, env={**os.environ, "PYTHONPATH": f".{os.pathsep}encodings"}, capture_output=True, text=True, check=True,
+        cwd=ROOT, env={**os.environ, "PYTHONPATH": f".{os.pathsep}encodings"},
+        capture_output=True, text=True, check=True,
     )  # fmt: skip
     assert not unwanted & set(run.stdout.split())
 

@@ -106,7 +106,9 @@ def test_blocks_of_growing_maps_find_all_cycles_of_a_cell(cell):
 
 
 @pytest.mark.parametrize("bits", [31, 32, 61, 62, 63, 64, 65, 126, 127, 128, 130])
-@pytest.mark.parametrize(("q", "base", "least", "length", "odd"), [(3, -1, 17, 11, 7), (3, 5, 347, 27, 17), (5, 1, 13, 7, 3)])
+@pytest.mark.parametrize(
+    ("q", "base", "least", "length", "odd"), [(3, -1, 17, 11, 7), (3, 5, 347, 27, 17), (5, 1, 13, 7, 3)]
+)
 def test_planted_cycles_at_the_borders_of_words(bits, q, base, least, length, odd):
     """A known cycle times an odd factor sits where elements or products leave 31, 32, 63, 64, 127 or 128 bits."""
     for shift in (0, 3, 7):
