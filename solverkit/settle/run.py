@@ -328,7 +328,7 @@ def _sweep_region(work: RegionWork, state: _State, progress: Progress) -> Region
     state.ledger.add_batch(key, _REGION, (work.cell,), pieces)
     have = {n: r for n, r in state.ledger.results(key, pieces).items() if r.complete}
     share = work.seconds / len(pieces)
-    limit = None if settings.budget is None else max(1.0, 2 * share)
+    limit = _region_limit(settings, share)
     queue = [(share, piece, Budget(limit, settings.memory)) for piece in pieces if piece.index not in have]
     for result in _results(queue, settings, progress, work.region.count):
         have[result.piece.index] = result
@@ -367,6 +367,11 @@ def _budget(batch: Batch, pieces: int, settings: Settings) -> Budget:
     if settings.budget is not None:
         seconds = max(settings.budget * len(batch.cells) / pieces, 1e-3)
     return Budget(seconds, settings.memory, settings.list_at_most)
+
+
+def _region_limit(settings: Settings, share: float) -> float | None:
+    """Return the time limit of one piece: a budget is for one cell, so it lets a piece of many have its share."""
+    return None if settings.budget is None else max(settings.budget, 1.0, 2 * share)
 
 
 def default_dossier(window: Window) -> Path:

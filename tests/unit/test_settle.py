@@ -23,6 +23,7 @@ from solverkit.settle.pool import Order, SerialExecutor, run_orders
 from solverkit.settle.run import Settings, settle
 from solverkit.settle.triage import Criterion, triage
 from solverkit.settle.verdicts import conclude, lists_by_cell
+from solverkit.shape import shape_from_table
 from solverkit.window import Cell, Sign, Window
 from tests.reference import cycles_by_iteration
 
@@ -204,6 +205,49 @@ def test_a_time_limit_leaves_cells_open_and_a_later_run_settles_them(tmp_path):
     assert "no answer within" in short.open_cells[0].reason
     later = settle(window, tmp_path / "d", Settings(methods=only, jobs=1))
     assert (later.exit_status, later.cycles) == (0, ())
+
+
+REGION_WINDOWS = [
+    Window((Map(3, 1),), Span(1, 40), signs=BOTH),
+    Window((Map(3, 5), Map(3, -7)), Span(4, 33), Span(2, 19), above=20, signs=BOTH),
+    Window((Map(3, 35),), Span(1, 30), primitive=True),
+    Window((Map(5, 3), Map(7, -5)), Span(2, 24), signs=BOTH),
+    Window((Map(3, 13),), Span(8, 8), Span(5, 5), above=258, shape=shape_from_table({"circuits": 2})),
+    Window((Map(9, 7),), Span(1, 20), above=3),
+]
+
+
+@pytest.mark.parametrize("window", REGION_WINDOWS, ids=lambda w: f"{w.maps[0]} {w.lengths}")
+def test_a_region_holds_the_cycles_that_its_cells_hold(window, tmp_path, monkeypatch):
+    """The same window settled cell by cell and as a whole."""
+    listed = settle(window, tmp_path / "listed", Settings(jobs=1))
+    monkeypatch.setattr(settle_run, "triage", lambda w, c: triage(w, c, list_limit=0))
+    whole = settle(window, tmp_path / "whole", Settings(jobs=1))
+    assert whole.complete
+    assert whole.findings == ()
+    assert whole.regions
+    assert whole.cycles == listed.cycles
+    assert all(region.swept_to == region.bound for region in whole.regions)
+
+
+def test_a_region_out_of_time_is_open_and_goes_on_later(tmp_path, monkeypatch):
+    window = Window((Map(3, 1),), Span(1, 100_000), signs=BOTH)
+    with monkeypatch.context() as patch:
+        patch.setattr(settle_run, "_region_limit", lambda _settings, _share: 1e-4)
+        short = settle(window, tmp_path / "d", Settings(jobs=1))
+    assert (short.complete, short.exit_status) == (False, 3)
+    assert any(region.swept_to < region.bound and "budget" in region.reason for region in short.regions)
+    later = settle(window, tmp_path / "d", Settings(jobs=2))
+    assert later.exit_status == 0
+    assert [c.least for c in later.cycles] == [-1, 1, -5, -17]
+
+
+def test_a_region_that_no_sweep_reaches_is_open_with_the_reason(tmp_path):
+    told = settle(Window((Map(3, 1),), Span(1, 10**9), above=2**30), tmp_path / "d")
+    (region,) = told.regions
+    assert told.exit_status == 3
+    assert region.region.count > 10**6
+    assert "would take" in region.reason
 
 
 class _Liar:
