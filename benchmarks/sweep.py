@@ -1,6 +1,6 @@
 """Ratios of the sweep to a plain C loop and a plain numba loop, all in one run, on one core and in processor time.
 
-Run with ``PYTHONPATH=. python benchmarks/sweep.py``; needs gcc. The plain loops know nothing but the definition: the
+Needs gcc. The plain loops know nothing but the definition: the
 orbit of each odd n is followed until it is below n, returns to n, or exceeds the most steps or odd steps allowed.
 Every part asserts that all of them find the same cycles.
 """
