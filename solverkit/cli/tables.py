@@ -35,7 +35,7 @@ _REASONS = {
     "imprimitive": "have only cycles with a factor in common with d",
     "residues": "are emptied by residues or side conditions",
 }
-_WIDE = 28
+_WIDE, _MOST_SHOWN = 28, 40
 _MINUS = "\N{MINUS SIGN}"
 
 
@@ -47,7 +47,7 @@ def _console() -> Console:
 
 def _number(value: int) -> str:
     text = f"{value:,}".replace(",", "\N{NARROW NO-BREAK SPACE}").replace("-", _MINUS)
-    return text if len(text) <= _WIDE else f"≈{_MINUS if value < 0 else ''}10^{len(str(abs(value))) - 1}"
+    return text if len(text) <= _MOST_SHOWN else f"≈{_MINUS if value < 0 else ''}10^{len(str(abs(value))) - 1}"
 
 
 def _share(value: Decimal) -> str:
@@ -100,7 +100,7 @@ def _window_lines(window: Window) -> list[str]:
 
 
 def _exclusions(examined: Triage, console: Console) -> None:
-    console.print(f"{_number(examined.total)} cells in the window, of which")
+    console.print(f"Cells in the window: {_number(examined.total)}, of which")
     for reason, count in examined.excluded.items():
         if count:
             console.print(f"  {_number(count):>{_WIDE}}  {_REASONS[reason]}")
