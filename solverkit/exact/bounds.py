@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from math import gcd
 from typing import TYPE_CHECKING
 
 from flint import arb, fmpz
@@ -11,7 +12,7 @@ from solverkit.exact.enclosures import floor_if_decided, precision
 if TYPE_CHECKING:
     from solverkit.window import Cell
 
-__all__ = ["EXACT_LENGTH", "balanced_beta", "balanced_bound", "product_bound", "product_holds"]
+__all__ = ["EXACT_LENGTH", "balanced_beta", "balanced_bound", "balanced_interval", "product_bound", "product_holds"]
 
 #: Up to this length the integer inequality itself decides a bound; beyond, rigorous enclosures do.
 EXACT_LENGTH = 20_000
@@ -113,3 +114,30 @@ def balanced_bound(cell: Cell) -> int:
     if (determinant > 0) != (cell.offset > 0):
         return 0
     return abs(cell.offset) * balanced_beta(cell.multiplier, cell.length, cell.odd) // abs(determinant)
+
+
+def balanced_interval(cell: Cell) -> tuple[int, int]:
+    """Return integers a ≤ U' ≤ b, at any length and in constant time; (0, 0) when no cycle has positive elements.
+
+    Args:
+        cell: of positive elements; its bound ``above`` is not used.
+
+    With ρ = 2^(k/x)/q, β*/q^(x−1) = Σ_j ρ^j·2^(−{jk/x}). For g = gcd(k, x) the fractional parts run g times through
+    0, g/x, 2g/x, …, so the sum lies between S and S·ρ^(x−1), S = g/(2·(1 − 2^(−g/x))). The ends differ by a factor
+    ρ^(x−1) = 2^(δ·(x−1)/x), δ = k − x·log2 q: close where the bound is large.
+    """
+    if not _sign_fits(cell):
+        return 0, 0
+    k, x, common = cell.length, cell.odd, gcd(cell.length, cell.odd)
+    with precision(128 + 4 * k.bit_length() + abs(cell.offset).bit_length()):
+        two, log_q = arb(2).log(), arb(cell.multiplier).log()
+        total = arb(common) / (2 * -(-two * common / x).expm1())
+        rise = k * two - x * log_q  # ln ρ^x
+        last = (rise * (x - 1) / x).exp()
+        scale = arb(abs(cell.offset)) * total / (cell.multiplier * abs(rise.expm1()))
+        ends = [scale * factor for factor in (arb(1), last)]
+        low = min(ends, key=lambda ball: ball.lower()).lower().floor().unique_fmpz()
+        high = max(ends, key=lambda ball: ball.upper()).upper().floor().unique_fmpz()
+    if low is None or high is None:
+        raise ArithmeticError(f"no enclosure of the balanced bound of {cell}")
+    return int(low), int(high)

@@ -9,7 +9,7 @@ from dataclasses import dataclass, replace
 from enum import StrEnum
 from itertools import islice
 
-from solverkit.exact.bounds import EXACT_LENGTH, balanced_bound, product_bound
+from solverkit.exact.bounds import EXACT_LENGTH, balanced_bound, balanced_interval, product_bound
 from solverkit.exact.chances import Forecast, forecast
 from solverkit.exact.cone import ThinCone
 from solverkit.exact.reduction import Reduction, reduced
@@ -185,6 +185,8 @@ def _examined(
     product, balanced = shared[key]
     deciding = product if criterion is Criterion.PRODUCT or balanced is None else balanced
     if deciding <= small.above:
+        return "bound"
+    if balanced is None and criterion is Criterion.BALANCED and balanced_interval(small)[1] <= small.above:
         return "bound"
     positive = replace(cell.positive(), above=0)
     whole = positive == replace(small, above=0)

@@ -52,6 +52,23 @@ def test_balanced_beta_is_the_largest_least_rotation(q, length, data):
         assert largest == balanced_beta(q, length, odd)
 
 
+@given(cells(longest=80))
+def test_closed_interval_holds_the_balanced_bound(cell):
+    low, high = bounds.balanced_interval(cell)
+    assert low <= balanced_bound(cell) <= high
+
+
+def test_closed_interval_is_tight_where_the_bound_is_large():
+    """Halbeisen & Hungerbühler (1997): 212366032807210 where the product bound is 294401824310229."""
+    low, high = bounds.balanced_interval(Cell(3, 1, 17087915, 10781274))
+    assert low <= 212366032807210 <= high
+    assert (high - low) * 10**7 < low
+    exact = balanced_bound(Cell(3, -101, 1054, 665))
+    low, high = bounds.balanced_interval(Cell(3, -101, 1054, 665))
+    assert low <= exact <= high
+    assert (high - low) * 1000 < low
+
+
 def test_balanced_beta_equals_the_published_examples():
     """Halbeisen & Hungerbühler, Acta Arith. 78 (1997)."""
     for pair, value in published("HB-01")["examples"].items():

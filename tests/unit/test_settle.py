@@ -68,6 +68,13 @@ class TestTriage:
             assert list(told.cells) == whole
             assert sum(told.excluded.values()) + told.live == told.total
 
+    def test_vast_cells_are_decided_by_the_closed_interval(self):
+        """Between U' and U of Eliahou's cell the balanced bound excludes what the product bound keeps."""
+        window = Window((Map(3, 1),), Span(17087915, 17087915), Span(10781274, 10781274), above=25 * 10**13)
+        assert triage(window, Criterion.PRODUCT).live == 1
+        assert triage(window).live == 0
+        assert triage(replace(window, above=2 * 10**14)).live == 1
+
     def test_many_maps_share_the_limit(self):
         window = Window(tuple(Map(3, d) for d in (1, 5, 35)), Span(1, 40))
         told = triage(window, list_limit=600)
