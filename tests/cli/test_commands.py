@@ -181,7 +181,7 @@ def test_a_dossier_of_another_window_or_in_a_file_is_refused(tmp_path):
 
 
 def test_an_open_cell_ends_with_status_3_and_a_reason(tmp_path):
-    cell = ["--map", "3,1", "--lengths", "17087915", "--odd", "10781274", "--above", "2^48"]
+    cell = ["--map", "3,1", "--lengths", "17087915", "--odd", "10781274", "--above", "2^47"]
     told = document("settle", *cell, "--budget", "0.01", "--methods", "matching", cwd=tmp_path, status=3)
     assert not told["complete"]
     (cell,) = told["cells"]
