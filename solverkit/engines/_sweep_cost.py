@@ -8,6 +8,8 @@ from __future__ import annotations
 from math import log2
 from typing import TYPE_CHECKING
 
+from solverkit.engines import _sweep_processor as processor
+
 if TYPE_CHECKING:
     from solverkit.engines._sweep_ranges import Profile
 
@@ -18,7 +20,7 @@ _BLOCK_SHORTEST = 30  # cycles shorter than this leave tables for growing maps n
 _FEWEST = 1 << 24
 _FALLING_NEAR, _FALLING_FAR = 1.7e-11, 4e-11  # a candidate of 3x + d in blocks, |d| up to and beyond 12,000
 _SMALL_OFFSET = 12_000
-_FALLING_PLAIN = 8e-9
+_FALLING_PLAIN, _FALLING_SIEVED = 8e-9, 5e-9
 _GROWING_FIVE, _GROWING_MORE = 3e-9, 1.2e-9
 _GROWING_STEP = 1.2e-9
 _PYTHON_STEP = 1.2e-7
@@ -48,11 +50,13 @@ def sweep_seconds(multiplier: int, offset: int, shape: Profile) -> float:
 def _each(multiplier: int, offset: int, low: int, high: int, length: int) -> float:
     """Return the time for one candidate of a stretch."""
     words = multiplier < 1 << 31 and abs(offset) < 1 << 61 and high < 1 << 62
-    blocks = abs(offset) < 1 << 52 and low >= _BLOCK_START - 1 and high < 1 << 80
+    wide = abs(offset) < 1 << 52 and low >= _BLOCK_START - 1 and high < 1 << 80
+    blocks = wide and processor.available()
     if multiplier == 3:
         if blocks and high - low >= _FEWEST // 4:
             return _FALLING_NEAR if abs(offset) <= _SMALL_OFFSET else _FALLING_FAR
-        return _FALLING_PLAIN if words else 12 * _PYTHON_STEP
+        plain = _FALLING_SIEVED if high - low > _FEWEST // 64 else _FALLING_PLAIN
+        return plain if words else 12 * _PYTHON_STEP
     if not words and not blocks:
         return min(length, 400) * _PYTHON_STEP
     if blocks and length >= _BLOCK_SHORTEST and multiplier < 200:

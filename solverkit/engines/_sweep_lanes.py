@@ -15,16 +15,12 @@ Everything here takes addresses, as uint64, of arrays whose length is a multiple
 
 from __future__ import annotations
 
-from functools import lru_cache
-from typing import Any
-
 from llvmlite import ir
 from numba import types
 from numba.extending import intrinsic
 
 __all__ = [
     "LANES",
-    "available",
     "broad_leaf",
     "broad_step",
     "class_value",
@@ -44,15 +40,6 @@ _V64 = ir.VectorType(_I64, LANES)
 _V32 = ir.VectorType(_I32, LANES)
 _V16 = ir.VectorType(_I16, 4 * LANES)
 _MASK = ir.VectorType(_I1, LANES)
-
-
-@lru_cache(maxsize=1)
-def available() -> bool:
-    """Tell whether this processor has the instructions that the lanes need."""
-    from llvmlite.binding import get_host_cpu_features  # noqa: PLC0415 - asked once, when a kernel is chosen
-
-    features: Any = get_host_cpu_features()
-    return all(features.get(name, False) for name in ("avx512f", "avx512bw", "avx512dq", "avx512vl"))
 
 
 class _Lanes:

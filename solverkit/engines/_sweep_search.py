@@ -5,8 +5,11 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Any
 
+from solverkit.engines import _sweep_processor as processor
 from solverkit.engines._sweep_orbit import closes, reached
 from solverkit.engines._sweep_residues import every_element, without_tails
+from solverkit.maps import Map
+from solverkit.residues.sieve import drop_threshold
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Generator, Iterator
@@ -21,6 +24,7 @@ __all__ = ["Search"]
 _PYTHON_STEPS = 20_000  # candidates × steps below which no kernel is loaded
 _WORK = 60_000_000  # steps between two looks at the clock: some tenths of a second
 _FEWEST_FALLING, _FEWEST_GROWING = 1 << 24, 1 << 22  # integers below which tables do not pay
+_FEWEST_SIEVED, _SIEVE_DEPTH = 1 << 18, 16
 _FIRST_LOOK = 4096  # steps after which an orbit that never fell is examined in Python integers
 _WORD = (1 << 64) - 1
 
@@ -72,6 +76,8 @@ class Search:
         """Return the block to sweep with tables from ``start`` on, or None when a plain pass is in order."""
         falling = self.multiplier == 3
         if last - start < (_FEWEST_FALLING if falling else _FEWEST_GROWING):
+            return None
+        if not processor.available():
             return None
         from solverkit.engines import _sweep_plan as plan  # noqa: PLC0415 - tables load only when they pay
 
@@ -131,15 +137,23 @@ class Search:
             elif end := closes(q, d, n, length, odd):
                 self.found.add((n, *end))
 
+    def _jumps(self, first: int, last: int) -> NDArray[Any]:
+        """Return, by residue, the distances to the next candidate: odd, or in a class that can hold least elements."""
+        from solverkit.engines._sweep_jumps import classes_apart, odd_apart  # noqa: PLC0415
+
+        here = Map(self.multiplier, self.offset)
+        if self.multiplier == 3 and last - first >= _FEWEST_SIEVED and first > drop_threshold(here, _SIEVE_DEPTH):
+            return classes_apart(here, _SIEVE_DEPTH)
+        return odd_apart()
+
     def _plainly(self, first: int, last: int) -> Generator[int, None, int]:
         """Iterate every odd candidate; return the last integer done after some tenths of a second."""
         q, d = self.multiplier, self.offset
         length, odd = self.limits(first)
-        n = first | 1
         brief = (last - first) * min(length, 100) < _PYTHON_STEPS
         if brief or not self._fits_words(last):
-            stop = min(last, n + 2 * max(1, 10 * _PYTHON_STEPS // max(1, min(length, 100))))
-            for candidate in range(n, stop + 1, 2):
+            stop = min(last, (first | 1) + 2 * max(1, 10 * _PYTHON_STEPS // max(1, min(length, 100))))
+            for candidate in range(first | 1, stop + 1, 2):
                 if end := closes(q, d, candidate, length, odd):
                     self.found.add((candidate, *end))
             yield stop
@@ -153,7 +167,18 @@ class Search:
         rows = np.zeros((simple.ROWS, 3), np.int64)
         limit = ((1 << 63) - 1 - abs(d)) // q
         count, after, _, tall = simple.scan(
-            q, d, n, last, length, odd, limit, np.uint64((1 << 61) // q), allowed, _WORK, rows
+            q,
+            d,
+            first,
+            last,
+            length,
+            odd,
+            limit,
+            np.uint64((1 << 61) // q),
+            allowed,
+            self._jumps(first, last),
+            _WORK,
+            rows,
         )
         self._count("wide", int(tall))
         for candidate, k, x in rows[:count].tolist():

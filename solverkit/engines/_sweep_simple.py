@@ -1,4 +1,4 @@
-"""The plain kernel: every odd candidate, one step of the map at a time, in 64 bits and then in 128 bits."""
+"""The plain kernel: candidate by candidate, one step of the map at a time, in 64 bits and then in 128 bits."""
 # mypy: disable-error-code="no-untyped-def,misc,no-any-return,untyped-decorator"
 # ruff: noqa: ANN001, ANN202 - numba infers the types
 
@@ -17,19 +17,20 @@ _U = np.uint64
 
 
 @njit(cache=True, nogil=True)
-def scan(q, d, first, last, length, odd, limit, wide_limit, allowed, work, rows):
-    """Iterate the odd integers from ``first`` until they drop, return, or exceed the limits.
+def scan(q, d, first, last, length, odd, limit, wide_limit, allowed, jumps, work, rows):
+    """Iterate the candidates from ``first`` on until they drop, return, or exceed the limits.
 
     Args:
         q: multiplier.
         d: offset.
-        first: first candidate, odd.
+        first: no candidate is below this.
         last: last candidate, below 2^62.
         length: most steps.
         odd: most odd steps.
         limit: largest v for which q·v + d is sure to fit in 63 bits.
         wide_limit: limit of `follow`.
         allowed: flags of the residues that elements have.
+        jumps: for each residue modulo its length, a power of two, the distance to the next candidate.
         work: stop at the next candidate after this many steps.
         rows: int64[ROWS, 3]; row i becomes (n, k, x) for a cycle, (n, 0, 0) for an orbit that left 126 bits.
 
@@ -38,10 +39,11 @@ def scan(q, d, first, last, length, odd, limit, wide_limit, allowed, work, rows)
     """
     count, steps, tall = 0, 0, 0
     modulus = len(allowed)
-    n = first
+    mask = len(jumps) - 1
+    n = first - 1 + jumps[(first - 1) & mask]
     while n <= last and steps < work and count < len(rows):
         if not allowed[n % modulus]:
-            n += 2
+            n += jumps[n & mask]
             steps += 1
             continue
         value, done, odds = n, 0, 0
@@ -70,5 +72,5 @@ def scan(q, d, first, last, length, odd, limit, wide_limit, allowed, work, rows)
             rows[count, 0], rows[count, 1], rows[count, 2] = n, 0, 0
             count += 1
         steps += done
-        n += 2
+        n += jumps[n & mask]
     return count, n, steps, tall

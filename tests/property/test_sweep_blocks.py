@@ -5,7 +5,7 @@ Cells with d = D, or D over a factor, have cycles in plenty, so that a candidate
 
 import pytest
 
-from solverkit.engines import _sweep_fast, _sweep_plan, _sweep_search
+from solverkit.engines import _sweep_fast, _sweep_plan, _sweep_processor, _sweep_search
 from solverkit.engines.sweep import ENGINE
 from solverkit.engines.tally import count_cycles
 from solverkit.methods import Budget, Piece, merged
@@ -26,6 +26,7 @@ def plain(monkeypatch):
         with monkeypatch.context() as patch:
             patch.setattr(_sweep_search, "_FEWEST_FALLING", 1 << 60)
             patch.setattr(_sweep_search, "_FEWEST_GROWING", 1 << 60)
+            patch.setattr(_sweep_search, "_FEWEST_SIEVED", 1 << 60)
             return _swept(*arguments, **named)
 
     return forced
@@ -82,6 +83,20 @@ def test_one_and_two_limb_kernels_of_small_offsets_agree_with_a_plain_pass(d, li
     assert statistics["tried"] > 0
     assert found == plain(3, d, first, last)[0]
     assert len(found) > 1000 or d != -7153
+
+
+@pytest.mark.parametrize(
+    ("d", "first"),
+    [(-7153 * 101, 1 << 25), (6487 * 333, 1 << 25), (3 * 7153 * -35, 1 << 25), (-7153, 1 << 19)],
+)
+def test_without_vector_instructions_the_sieved_pass_finds_the_same(d, first, plain, monkeypatch):
+    """On processors without AVX-512 no block is swept; the plain pass then skips classes that hold no least element."""
+    monkeypatch.setattr(_sweep_processor, "available", lambda: False)
+    last = first + (1 << 22)
+    found, statistics = _swept(3, d, first, last)
+    assert "tried" not in statistics
+    assert found == plain(3, d, first, last)[0]
+    assert found
 
 
 @pytest.mark.parametrize(
