@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import sys
+from io import TextIOWrapper
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
@@ -19,6 +20,10 @@ def main(arguments: Sequence[str] | None = None) -> None:
     from solverkit.cli.commands import application  # noqa: PLC0415 - parts of a command load only when it runs
     from solverkit.errors import SolverkitError  # noqa: PLC0415
 
+    for stream in (sys.stdout, sys.stderr):
+        # A terminal without these characters gets question marks rather than an error.
+        if isinstance(stream, TextIOWrapper):
+            stream.reconfigure(errors="replace")
     try:
         status = application()(args=None if arguments is None else list(arguments), standalone_mode=False)
     except SolverkitError as problem:

@@ -12,6 +12,7 @@ import typer
 
 from solverkit import __version__
 from solverkit.cli.window_options import takes_window
+from solverkit.errors import InputError
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -52,6 +53,9 @@ class Level(StrEnum):
     PROVED = "proved"
 
 
+#: No budget in seconds and no limit in GiB is larger.
+_MOST = 1e9
+
 FormatOption = Annotated[Format, typer.Option("--format", help="text, or one JSON document on standard output.")]
 
 
@@ -61,7 +65,7 @@ def application() -> Callable[..., Any]:
 
 
 def _print_json(document: object) -> None:
-    sys.stdout.write(json.dumps(document, indent=1, ensure_ascii=False) + "\n")
+    sys.stdout.write(json.dumps(document, indent=1, ensure_ascii=True) + "\n")
 
 
 def _version(value: bool) -> None:
@@ -151,6 +155,9 @@ def settle(
 
     names = None if methods is None else tuple(method_named(name.strip()).name for name in methods.split(","))
     folder = dossier or default_dossier(window)
+    for option, value in (("--budget", budget), ("--limit-memory", limit_memory)):
+        if value is not None and not 0 < value < _MOST:
+            raise InputError(option, value, f"a number above 0 and below {_MOST:g}")
     settings = Settings(
         evidence=None if evidence is None else Evidence[evidence.name],
         methods=names,

@@ -2,8 +2,10 @@
 
 import json
 import os
+import signal
 import subprocess
 import sys
+import time
 
 import pytest
 
@@ -144,6 +146,10 @@ WRONG = [
     (["triage", "--map", "3,1", "--lengths", "5", "--most", "-1"], "--most"),
     (["settle", "--map", "3,1", "--lengths", "5", "--jobs", "0"], "--jobs"),
     (["settle", "--map", "3,1", "--lengths", "5", "--methods", "guess"], "methods"),
+    (["settle", "--map", "3,1", "--lengths", "5", "--budget", "nan"], "--budget"),
+    (["settle", "--map", "3,1", "--lengths", "5", "--limit-memory", "9" * 400], "--limit-memory"),
+    (["triage", "--map", "3,1", "--lengths", "5", "--offsets-at-most", "9"], "--offsets-at-most"),
+    (["triage", "--map", "3,any", "--lengths", "5"], "--offsets-at-most"),
     (["settle", "--map", "3,1", "--lengths", "5", "--evidence", "sure"], "--evidence"),
     (["settle", "absent.toml"], "window file"),
     (["settle", "--dossier"], "--dossier"),
@@ -203,3 +209,26 @@ def test_output_into_a_closed_pipe_is_no_traceback(tmp_path):
     )
     run = subprocess.run(["bash", "-c", command], cwd=tmp_path, capture_output=True, text=True, check=False)
     assert "Traceback" not in run.stderr
+
+
+@pytest.mark.parametrize("command", [["triage"], ["settle"]])
+def test_a_terminal_that_knows_only_ascii_gets_its_tables(command, tmp_path):
+    run = solverkit(*command, "--map", "3,-1", "--lengths", "1..12", cwd=tmp_path, PYTHONIOENCODING="ascii")
+    assert (run.returncode, run.stderr) == (0, "")
+    assert "words" in run.stdout or "Settled" in run.stdout
+
+
+def test_an_interrupt_leaves_a_dossier_that_the_same_command_continues(tmp_path):
+    command = [sys.executable, "-m", "solverkit", "settle", "--map", "3,5..99", "--lengths", "1..60", "--dossier", "d"]
+    process = subprocess.Popen(command, cwd=tmp_path, stdout=subprocess.PIPE, stderr=subprocess.PIPE, text=True)
+    ledger = tmp_path / "d" / "ledger.sqlite"
+    while not ledger.exists():
+        time.sleep(0.05)
+    time.sleep(1.5)
+    second = solverkit("settle", "--map", "3,5..99", "--lengths", "1..60", "--dossier", "d", cwd=tmp_path)
+    assert (second.returncode, second.stderr.count("\n")) == (2, 1)
+    assert "another run has it open" in second.stderr
+    process.send_signal(signal.SIGINT)
+    out, err = process.communicate(timeout=30)
+    assert (process.returncode, out, err.count("\n")) == (3, "", 1)
+    assert "the same command continues it" in err
