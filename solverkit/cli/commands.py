@@ -55,6 +55,7 @@ class Level(StrEnum):
 
 #: No budget in seconds and no limit in GiB is larger.
 _MOST = 1e9
+_MOST_LISTED = 1_000_000
 
 FormatOption = Annotated[Format, typer.Option("--format", help="text, or one JSON document on standard output.")]
 
@@ -152,12 +153,15 @@ def settle(
     from solverkit.settle.documents import settle_document  # noqa: PLC0415
     from solverkit.settle.run import Settings, default_dossier  # noqa: PLC0415
     from solverkit.settle.run import settle as decide  # noqa: PLC0415
+    from solverkit.settle.triage import count_cells  # noqa: PLC0415
 
     names = None if methods is None else tuple(method_named(name.strip()).name for name in methods.split(","))
     folder = dossier or default_dossier(window)
     for option, value in (("--budget", budget), ("--limit-memory", limit_memory)):
         if value is not None and not 0 < value < _MOST:
             raise InputError(option, value, f"a number above 0 and below {_MOST:g}")
+    if all_cells and count_cells(window) > _MOST_LISTED:
+        raise InputError("--all-cells", f"a window of {count_cells(window)} cells", f"at most {_MOST_LISTED} cells")
     settings = Settings(
         evidence=None if evidence is None else Evidence[evidence.name],
         methods=names,

@@ -16,7 +16,7 @@ from solverkit.exact.reduction import Reduction, reduced
 from solverkit.maps import Map
 from solverkit.window import Cell, Side, Window
 
-__all__ = ["LIST_LIMIT", "Criterion", "LiveCell", "Region", "Triage", "triage"]
+__all__ = ["LIST_LIMIT", "Criterion", "LiveCell", "Region", "Triage", "count_cells", "triage"]
 
 #: A side with more cells than this under the product bound is counted, not listed.
 LIST_LIMIT = 200_000
@@ -141,6 +141,13 @@ def triage(window: Window, criterion: Criterion = Criterion.BALANCED, list_limit
                 cells.append(verdict)
     total = sum(cone.total for _, cone in sides)
     return Triage(window, criterion, tuple(cells), tuple(regions), dict(excluded), total)
+
+
+def count_cells(window: Window) -> int:
+    """Return the number of cells of ``window``, live or not, without looking at them."""
+    side = next(window.sides())
+    cone = ThinCone(side.positive_map, window.bound, window.lengths, window.odd_range)
+    return cone.total * len(window.maps) * len(window.signs)
 
 
 def _whole_only(window: Window, side: Side, cone: ThinCone) -> list[tuple[int, int]] | None:

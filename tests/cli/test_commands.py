@@ -150,6 +150,7 @@ WRONG = [
     (["settle", "--map", "3,1", "--lengths", "5", "--limit-memory", "9" * 400], "--limit-memory"),
     (["triage", "--map", "3,1", "--lengths", "5", "--offsets-at-most", "9"], "--offsets-at-most"),
     (["triage", "--map", "3,any", "--lengths", "5"], "--offsets-at-most"),
+    (["settle", "--map", "3,1", "--lengths", "1..10^9", "--above", "2^71", "--all-cells"], "--all-cells"),
     (["settle", "--map", "3,1", "--lengths", "5", "--evidence", "sure"], "--evidence"),
     (["settle", "absent.toml"], "window file"),
     (["settle", "--dossier"], "--dossier"),

@@ -21,7 +21,7 @@ from solverkit.settle import run as settle_run
 from solverkit.settle.choice import method_named, plan
 from solverkit.settle.pool import Order, SerialExecutor, run_orders
 from solverkit.settle.run import Settings, settle
-from solverkit.settle.triage import Criterion, triage
+from solverkit.settle.triage import Criterion, count_cells, triage
 from solverkit.settle.verdicts import conclude, lists_by_cell
 from solverkit.shape import shape_from_table
 from solverkit.window import Cell, Sign, Window
@@ -42,6 +42,7 @@ class TestTriage:
         ):
             for criterion in Criterion:
                 told = triage(window, criterion)
+                assert told.total == count_cells(window)
                 assert sum(told.excluded.values()) + told.live == told.total
 
     def test_the_balanced_bound_never_keeps_more(self):
