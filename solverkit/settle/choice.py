@@ -21,10 +21,12 @@ if TYPE_CHECKING:
     from solverkit.methods import Family, Method
     from solverkit.window import Cell
 
-__all__ = ["CONFIRM_SECONDS", "Batch", "Plan", "default_methods", "method_named", "plan"]
+__all__ = ["CONFIRM_LIMIT", "CONFIRM_SECONDS", "Batch", "Plan", "default_methods", "method_named", "plan"]
 
-#: A second method that needs more than this for a cell is left out unless a budget allows it.
-CONFIRM_SECONDS = 60.0
+#: A second method that is expected to need more than this for a cell is left out, unless a budget allows it; one that
+#: takes six times as long is ended, and the cell stays computed.
+CONFIRM_SECONDS = 10.0
+CONFIRM_LIMIT = 60.0
 _MOST_CUTS = 64
 
 
@@ -59,11 +61,13 @@ class Batch:
         method: name of the method.
         cells: reduced, of positive elements, of one map.
         seconds: estimated computing time on one core.
+        limit: seconds after which each piece is ended, or None; set for second methods.
     """
 
     method: str
     cells: tuple[Cell, ...]
     seconds: float
+    limit: float | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -128,12 +132,12 @@ def plan(
                     cost, second = _cheapest(cell, others, failed)
                     if second is not None and cost <= confirm_seconds:
                         confirming[second.name].append(cell)
-    return Plan((*_batches(chosen), *_batches(confirming)), refused)
+    return Plan((*_batches(chosen), *_batches(confirming, CONFIRM_LIMIT)), refused)
 
 
-def _batches(chosen: Mapping[str, list[Cell]]) -> list[Batch]:
+def _batches(chosen: Mapping[str, list[Cell]], limit: float | None = None) -> list[Batch]:
     batches = [
-        Batch(name, group, calibrated(method_named(name), group))
+        Batch(name, group, calibrated(method_named(name), group), limit)
         for name, members in chosen.items()
         for group in method_named(name).batches(members)
     ]

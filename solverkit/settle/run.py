@@ -13,7 +13,7 @@ from solverkit.findings import CellFinding, Cycle, Evidence, Verdict
 from solverkit.ledger.ledger import Ledger, batch_key
 from solverkit.methods import LIST_AT_MOST, Budget, merged
 from solverkit.settle.calibration import calibrated, factors, measure
-from solverkit.settle.choice import CONFIRM_SECONDS, Batch, default_methods, method_named, plan
+from solverkit.settle.choice import CONFIRM_LIMIT, CONFIRM_SECONDS, Batch, default_methods, method_named, plan
 from solverkit.settle.pool import Order, executor, run_orders, usable_cores
 from solverkit.settle.regions import RegionFinding, RegionWork, conclude_region, region_work
 from solverkit.settle.triage import Criterion, Triage, triage
@@ -198,7 +198,7 @@ def settle(
     with _opened(window, dossier) as ledger:
         state = _State(window, ledger, settings)
         state.take(ledger.listings())
-        state.failed.clear()
+        state.failed = _not_again(state)
         resumed = sum(entry.complete for entry in state.listings.values())
         progress = progress or _Silent()
         _decide(cells, state, progress)
@@ -225,6 +225,17 @@ def _opened(window: Window, dossier: Path) -> Ledger:
     return ledger
 
 
+def _not_again(state: _State) -> set[tuple[str, Cell]]:
+    """Return the second methods that were ended before and are not worth another try.
+
+    A budget or a level of evidence that is asked for makes them worth it; so does a cell that has no complete list yet.
+    """
+    if state.settings.budget is not None or state.settings.evidence is not None:
+        return set()
+    decided = {cell for (_, cell), entry in state.listings.items() if entry.complete}
+    return {(method, cell) for method, cell in state.failed if cell in decided}
+
+
 def _reduced_cells(examined: Triage) -> tuple[Cell, ...]:
     """Return the reduced cells without repeats, each with the least bound that any of its originals asks for."""
     least: dict[tuple[int, int, int, int], Cell] = {}
@@ -240,13 +251,19 @@ def _decide(cells: Sequence[Cell], state: _State, progress: Progress) -> None:
     settings = state.settings
     methods = None if settings.methods is None else tuple(method_named(name) for name in settings.methods)
     wanted = set(cells)
+    decided = {cell for (_, cell), entry in state.listings.items() if entry.complete}
     unfinished = [
-        Batch(method, members, calibrated(method_named(method), members))
+        Batch(
+            method,
+            members,
+            calibrated(method_named(method), members),
+            CONFIRM_LIMIT if decided.issuperset(members) else None,
+        )
         for _, method, members in state.ledger.batches()
         if method != _REGION
         and (settings.methods is None or method in settings.methods)
         and wanted.issuperset(members)
-        and any(not _complete(state, method, cell) for cell in members)
+        and any(not _complete(state, method, cell) and (method, cell) not in state.failed for cell in members)
     ]
     if unfinished:
         _execute(unfinished, state, progress)
@@ -363,7 +380,7 @@ def _orders(queue: Sequence[tuple[float, Piece, Budget]]) -> Iterator[Order]:
 
 
 def _budget(batch: Batch, pieces: int, settings: Settings) -> Budget:
-    seconds = None
+    seconds = batch.limit
     if settings.budget is not None:
         seconds = max(settings.budget * len(batch.cells) / pieces, 1e-3)
     return Budget(seconds, settings.memory, settings.list_at_most)

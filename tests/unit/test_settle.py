@@ -215,6 +215,19 @@ def test_a_time_limit_leaves_cells_open_and_a_later_run_settles_them(tmp_path):
     assert (later.exit_status, later.cycles) == (0, ())
 
 
+def test_a_second_method_out_of_time_leaves_the_cell_computed_and_is_not_tried_again(tmp_path, monkeypatch):
+    window = Window((Map(3, -3191),), Span(45, 45), Span(29, 29))
+    monkeypatch.setattr(choice, "CONFIRM_LIMIT", 0.02)
+    only = (method_named("sweep"), method_named("cnf"))
+    monkeypatch.setattr(choice, "default_methods", lambda: only)
+    told = settle(window, tmp_path / "d", Settings(jobs=1))
+    assert (told.exit_status, told.findings[0].evidence) == (0, Evidence.COMPUTED)
+    monkeypatch.setattr(choice, "CONFIRM_LIMIT", 60.0)
+    assert settle(window, tmp_path / "d", Settings(jobs=1)).findings[0].evidence is Evidence.COMPUTED
+    asked = settle(window, tmp_path / "d", Settings(Evidence.CONFIRMED, jobs=1))
+    assert (asked.exit_status, asked.findings[0].evidence) == (0, Evidence.CONFIRMED)
+
+
 REGION_WINDOWS = [
     Window((Map(3, 1),), Span(1, 40), signs=BOTH),
     Window((Map(3, 5), Map(3, -7)), Span(4, 33), Span(2, 19), above=20, signs=BOTH),
