@@ -6,6 +6,7 @@ Cells with d = D, or D over a factor, have cycles in plenty, so that a candidate
 import pytest
 
 from solverkit.engines import _sweep_fast, _sweep_plan, _sweep_processor, _sweep_search
+from solverkit.engines._sweep_residues import every_element
 from solverkit.engines.sweep import ENGINE
 from solverkit.engines.tally import count_cycles
 from solverkit.methods import Budget, Piece, merged
@@ -118,6 +119,28 @@ def test_blocks_of_growing_maps_find_all_cycles_of_a_cell(cell):
     assert entry.complete
     assert any(result.statistics.get("tried", 0) for result in results)
     assert len(entry.least) == count_cycles(cell)
+
+
+@pytest.mark.parametrize(("d", "bits"), [(1, 40), (-1, 62), (1, 64), (-5, 70), (10007, 62), (10007, 70)])
+def test_no_candidate_that_never_drops_is_lost_at_any_height(d, bits, monkeypatch):
+    """With two passes left to the kernels, all that stays up for so many steps is handed back, by plain iteration."""
+    monkeypatch.setattr(_sweep_fast, "_PASSES", 2)
+    start = (1 << bits) + 12345 * (1 << 20)
+    block = _sweep_plan.block_at(3, d, start, start + (1 << 20) - 1)
+    residues = every_element(3, d)
+    kept = {int(label) for labels in _sweep_fast.survivors(3, d, block, residues, None, {}) for label in labels}
+    stays = set()
+    for n in range(block.base | 1, block.end, 2):
+        value = n
+        for _ in range(block.depth + 25):
+            value = (3 * value + d) >> 1 if value & 1 else value >> 1
+            if value < n:
+                break
+        else:
+            if residues.allowed[n % residues.modulus]:
+                stays.add(n - block.base)
+    assert len(stays) > 5000
+    assert stays <= kept
 
 
 @pytest.mark.parametrize("bits", [31, 32, 61, 62, 63, 64, 65, 126, 127, 128, 130])
