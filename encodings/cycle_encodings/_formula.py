@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from enum import StrEnum
 from hashlib import sha256
 from typing import TYPE_CHECKING, Protocol
 
@@ -13,7 +14,29 @@ if TYPE_CHECKING:
 
     from solverkit.window import Cell
 
-__all__ = ["Encoder", "Encoding"]
+__all__ = ["Encoder", "Encoding", "Form", "Statement"]
+
+
+class Form(StrEnum):
+    """What an encoding produces."""
+
+    CNF = "cnf"
+    CONSTRAINTS = "constraints"
+    INEQUALITIES = "inequalities"
+
+
+class Statement(Protocol):
+    """What every encoding of a cell gives, whatever its form."""
+
+    @property
+    def cell(self) -> Cell:
+        """The cell, of positive elements."""
+
+    def sizes(self) -> dict[str, int]:
+        """Return what there is of each kind, such as ``{"variables": 10, "clauses": 20}``."""
+
+    def digest(self) -> str:
+        """Return a SHA-256 that the same cell and options always give."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -35,6 +58,10 @@ class Encoding:
     groups: Mapping[str, tuple[tuple[int, int], ...]]
     least_bits: tuple[int, ...]
     names: Mapping[int, str]
+
+    def sizes(self) -> dict[str, int]:
+        """Return the numbers of variables and clauses."""
+        return {"variables": self.variables, "clauses": len(self.clauses)}
 
     def cnf(self) -> CNF:
         """Return the formula as python-sat keeps it."""
@@ -74,8 +101,12 @@ class Encoder(Protocol):
     def summary(self) -> str:
         """One line: what it is good for."""
 
-    def encode(self, cell: Cell) -> Encoding:
-        """Return the formula for a cell of positive elements; the same cell gives the same formula."""
+    @property
+    def form(self) -> Form:
+        """Which back ends take it."""
+
+    def encode(self, cell: Cell) -> Statement:
+        """Return the statement for a cell of positive elements; the same cell gives the same statement."""
 
     def size(self, cell: Cell) -> int:
-        """Return a rough number of clauses, without building them."""
+        """Return a rough number of clauses or rows, without building them."""

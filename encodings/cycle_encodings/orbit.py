@@ -21,7 +21,7 @@ from dataclasses import dataclass
 from itertools import pairwise
 from typing import TYPE_CHECKING
 
-from cycle_encodings._formula import Encoding
+from cycle_encodings._formula import Encoding, Form
 from cycle_encodings._gates import Builder
 from solverkit.errors import InputError
 from solverkit.exact.bounds import balanced_bound
@@ -50,6 +50,7 @@ class Orbit:
     depth: int = 12
     guards: bool = True
     name: str = "orbit"
+    form: Form = Form.CNF
     summary: str = "bits of every element, one addition a step; plain and exact, for U' up to about 10^4"
 
     def __post_init__(self) -> None:

@@ -28,6 +28,8 @@ __all__ = ["CONFIRM_LIMIT", "CONFIRM_SECONDS", "Batch", "Plan", "default_methods
 CONFIRM_SECONDS = 10.0
 CONFIRM_LIMIT = 60.0
 _MOST_CUTS = 64
+# The values of solvers._contract.Kind, which loads python-sat.
+_SOLVER_KINDS = ("cnf", "cp", "mip", "pb")
 
 
 @lru_cache
@@ -41,11 +43,13 @@ def method_named(name: str) -> Method:
     if name in engines:
         engine: Method = load("engines", name)
         return engine
-    if name.partition("@")[0].partition(":")[0] == "cnf":
+    if name.partition("@")[0].partition(":")[0] in _SOLVER_KINDS:
         from solverkit.solvers._formula_method import formula_method  # noqa: PLC0415 - solvers load only when used
 
         return formula_method(name)
-    raise InputError("methods", name, ", ".join([*engines, "cnf:ENCODING@SOLVER"]))
+    raise InputError(
+        "methods", name, ", ".join([*engines, "KIND:ENCODING@SOLVER with KIND " + " or ".join(_SOLVER_KINDS)])
+    )
 
 
 def default_methods() -> tuple[Method, ...]:

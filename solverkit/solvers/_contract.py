@@ -3,14 +3,29 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Protocol
+from enum import StrEnum
+from typing import TYPE_CHECKING, Any, Protocol
+
+from cycle_encodings._formula import Form
 
 if TYPE_CHECKING:
     from collections.abc import Iterator
 
-    from cycle_encodings._formula import Encoding
+__all__ = ["Abilities", "BackEnd", "Kind"]
 
-__all__ = ["Abilities", "BackEnd"]
+
+class Kind(StrEnum):
+    """Kinds of solvers, as methods name them."""
+
+    CNF = "cnf"
+    CP = "cp"
+    MIP = "mip"
+    PB = "pb"
+
+    @property
+    def form(self) -> Form:
+        """The form of encodings that solvers of this kind take."""
+        return {Kind.CNF: Form.CNF, Kind.CP: Form.CONSTRAINTS}.get(self, Form.INEQUALITIES)
 
 
 @dataclass(frozen=True, slots=True)
@@ -21,15 +36,17 @@ class Abilities:
         incremental: clauses can be added between solutions.
         proofs: it can log a clausal refutation.
         assumptions: it can solve under assumed literals and name those it used.
+        exact: it decides in exact arithmetic; without, "infeasible" is no evidence.
     """
 
     incremental: bool
     proofs: bool
     assumptions: bool
+    exact: bool = True
 
 
 class BackEnd(Protocol):
-    """A solver of formulas."""
+    """A solver of the encodings of one form."""
 
     @property
     def name(self) -> str:
@@ -43,7 +60,11 @@ class BackEnd(Protocol):
     def abilities(self) -> Abilities:
         """What it can do."""
 
-    def least_elements(self, encoding: Encoding) -> Iterator[int]:
+    @property
+    def kind(self) -> Kind:
+        """Which form of encodings it takes, and how methods name it."""
+
+    def least_elements(self, encoding: Any) -> Iterator[int]:  # noqa: ANN401 - each kind has its own form
         """Yield the least element of each model, blocking it before the next; end when no model is left.
 
         Runs for as long as it takes; the caller sets limits from outside.

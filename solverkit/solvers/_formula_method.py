@@ -11,6 +11,7 @@ from solverkit.exact.bounds import EXACT_LENGTH, balanced_bound
 from solverkit.findings import Cycle
 from solverkit.methods import Budget, Family, Hit, Piece, PieceResult
 from solverkit.registry import load
+from solverkit.solvers._contract import BackEnd, Kind
 from solverkit.solvers._isolation import SolverProcess
 from solverkit.words import lyndon_count
 
@@ -20,10 +21,15 @@ if TYPE_CHECKING:
     from cycle_encodings._formula import Encoder
     from solverkit.window import Cell
 
-__all__ = ["DEFAULT_ENCODING", "DEFAULT_SOLVER", "FormulaMethod", "formula_method"]
+__all__ = ["DEFAULTS", "FormulaMethod", "formula_method"]
 
-DEFAULT_ENCODING = "orbit"
-DEFAULT_SOLVER = "cadical195"
+#: Kind of solver -> the encoding and the solver that are used when none is named.
+DEFAULTS = {
+    Kind.CNF: ("orbit", "cadical195"),
+    Kind.CP: ("constraints", "cpsat"),
+    Kind.MIP: ("inequalities", "highs"),
+    Kind.PB: ("inequalities", "exact"),
+}
 _MOST_CLAUSES = 50_000_000
 
 _process = SolverProcess()
@@ -31,7 +37,7 @@ _process = SolverProcess()
 
 @dataclass(frozen=True, slots=True)
 class FormulaMethod:
-    """A CNF encoding with a clausal solver.
+    """An encoding with a solver that takes it.
 
     Args:
         encoding: name of the encoding.
@@ -43,8 +49,9 @@ class FormulaMethod:
 
     @property
     def name(self) -> str:
-        """``cnf:ENCODING@SOLVER``."""
-        return f"cnf:{self.encoding}@{self.solver}"
+        """``KIND:ENCODING@SOLVER``."""
+        back_end: BackEnd = load("solvers", self.solver)
+        return f"{back_end.kind}:{self.encoding}@{self.solver}"
 
     @property
     def family(self) -> Family:
@@ -108,16 +115,22 @@ class FormulaMethod:
 
 
 def formula_method(text: str) -> FormulaMethod:
-    """Return the method that ``cnf``, ``cnf:ENCODING``, ``cnf@SOLVER`` or ``cnf:ENCODING@SOLVER`` names.
+    """Return the method that ``KIND``, ``KIND:ENCODING``, ``KIND@SOLVER`` or ``KIND:ENCODING@SOLVER`` names.
 
     Raises:
-        InputError: another form, or an unknown encoding or solver.
+        InputError: another form, an unknown encoding or solver, or two that do not go together.
     """
     head, at, solver = text.partition("@")
     kind, colon, encoding = head.partition(":")
-    if kind != "cnf" or (at and not solver) or (colon and not encoding):
-        raise InputError("methods", text, "cnf, cnf:ENCODING, cnf@SOLVER or cnf:ENCODING@SOLVER")
-    method = FormulaMethod(encoding or DEFAULT_ENCODING, solver or DEFAULT_SOLVER)
-    load("encodings", method.encoding)
-    load("solvers", method.solver)
+    if kind not in set(Kind) or (at and not solver) or (colon and not encoding):
+        kinds = ", ".join(Kind)
+        raise InputError("methods", text, f"KIND, KIND:ENCODING, KIND@SOLVER or KIND:ENCODING@SOLVER with KIND {kinds}")
+    usual_encoding, usual_solver = DEFAULTS[Kind(kind)]
+    method = FormulaMethod(encoding or usual_encoding, solver or usual_solver)
+    encoder: Encoder = load("encodings", method.encoding)
+    back_end: BackEnd = load("solvers", method.solver)
+    if back_end.kind != kind:
+        raise InputError("methods", text, f"{back_end.kind} with the solver {method.solver}")
+    if encoder.form != Kind(kind).form:
+        raise InputError("methods", text, f"for {kind}, an encoding of the form {Kind(kind).form}")
     return method

@@ -85,6 +85,10 @@ class SolverProcess:
                     least.append(content)
                 elif kind == "done":
                     return Answer(tuple(least), True, "", content)
+                elif kind == "inexact":
+                    return Answer(
+                        tuple(least), False, "infeasible in floating-point arithmetic, which proves nothing", content
+                    )
                 else:
                     self.close()
                     return Answer(tuple(least), False, content, {})
@@ -130,7 +134,8 @@ def _serve(pipe: Connection) -> None:
             cell, encoding, solver, memory = pipe.recv()
             try:
                 _limit_memory(memory)
-                pipe.send(("done", _solve(pipe, cell, encoding, solver)))
+                exact = load("solvers", solver).abilities.exact
+                pipe.send(("done" if exact else "inexact", _solve(pipe, cell, encoding, solver)))
             except MemoryError:
                 pipe.send(("failed", "the memory limit was reached"))
             except (EOFError, BrokenPipeError):
@@ -152,8 +157,7 @@ def _solve(pipe: Connection, cell: Cell, encoding: str, solver: str) -> dict[str
     for least in back_end.least_elements(formula):
         pipe.send(("least", least))
     return {
-        "variables": formula.variables,
-        "clauses": len(formula.clauses),
+        **formula.sizes(),
         "digest": formula.digest(),
         "encode_s": round(encoded - begun, 6),
         "solve_s": round(time.perf_counter() - encoded, 6),

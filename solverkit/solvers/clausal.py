@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING
 
 from pysat.solvers import Solver, SolverNames
 
-from solverkit.solvers._contract import Abilities
+from solverkit.solvers._contract import Abilities, Kind
 
 if TYPE_CHECKING:
     from collections.abc import Iterator
@@ -32,6 +32,7 @@ class ClausalSolver:
     """
 
     name: str
+    kind: Kind = Kind.CNF
 
     @property
     def version(self) -> str:

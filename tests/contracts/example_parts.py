@@ -10,7 +10,7 @@ from cycle_encodings._formula import Encoding
 from cycle_encodings._gates import Builder
 from solverkit.exact.bounds import balanced_bound
 from solverkit.methods import Family, Hit, Piece, PieceResult
-from solverkit.solvers._contract import Abilities
+from solverkit.solvers._contract import Abilities, Kind
 
 
 def closes(cell, n):
@@ -53,6 +53,7 @@ class OneLiteralEach:
     """An encoding with a literal for each least element, found beforehand: good for showing the contract only."""
 
     name = "one-literal-each"
+    form = Form.CNF
     summary = "shows the contract"
 
     def size(self, cell):
@@ -76,6 +77,7 @@ class FreshEachTime:
 
     name = "fresh-each-time"
     version = "1"
+    kind = Kind.CNF
     abilities = Abilities(incremental=False, proofs=False, assumptions=False)
 
     def least_elements(self, encoding):

@@ -6,6 +6,7 @@ from dataclasses import replace
 
 import pytest
 
+from cycle_encodings._formula import Form
 from solverkit.findings import Cycle
 from solverkit.methods import Budget, merged
 from solverkit.registry import parts
@@ -14,8 +15,16 @@ from solverkit.window import Cell
 from tests.reference import cycles_of_cell
 
 ENGINES = [part.name for part in parts("engines")]
-PAIRS = [f"cnf:{encoding.name}@cadical195" for encoding in parts("encodings")]
-SOLVERS = [f"cnf:orbit@{solver.name}" for solver in parts("solvers")]
+# A form of encodings -> the kind and the solver that judge it; a kind of solvers -> the encoding they are judged on.
+JUDGE = {Form.CNF: ("cnf", "cadical195"), Form.CONSTRAINTS: ("cp", "cpsat"), Form.INEQUALITIES: ("pb", "exact")}
+PAIRS = [
+    f"{JUDGE[part.value.form][0]}:{part.name}@{JUDGE[part.value.form][1]}" for part in parts("encodings") if part.value
+]
+SOLVERS = [
+    method_named(f"{part.value.kind}@{part.name}").name
+    for part in parts("solvers")
+    if part.value and part.value.abilities.exact
+]
 
 # Reduced cells: empty, one cycle, several, fixed points, repeated words only, both signs, q up to 181.
 CELLS = [
