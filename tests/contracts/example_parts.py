@@ -6,7 +6,7 @@ An outside package names such objects in its entry points, groups ``solverkit.en
 
 from pysat.solvers import Solver
 
-from cycle_encodings._formula import Encoding
+from cycle_encodings._formula import Encoding, Form
 from cycle_encodings._gates import Builder
 from solverkit.exact.bounds import balanced_bound
 from solverkit.methods import Family, Hit, Piece, PieceResult
