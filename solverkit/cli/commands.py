@@ -11,6 +11,8 @@ from typing import TYPE_CHECKING, Annotated, Any
 import typer
 
 from solverkit import __version__
+from solverkit.cli.encode_command import encode
+from solverkit.cli.trial_command import trial
 from solverkit.cli.window_options import takes_window
 from solverkit.errors import InputError
 
@@ -184,6 +186,12 @@ def settle(
 
         print_settlement(settlement, folder)
     return settlement.exit_status
+
+
+_app.command(epilog="Example: [bold]solverkit encode --map 3,5 --cell 27,17 --to cell.cnf[/bold]")(encode)
+_app.command(
+    epilog="Example: [bold]solverkit trial --map 3,5 --lengths 20..30 --encodings orbit --solvers glucose4[/bold]"
+)(trial)
 
 
 @_app.command(epilog="Example: [bold]solverkit catalog --format json[/bold]")

@@ -26,6 +26,8 @@ _GROWING_STEP = 1.2e-9
 _PYTHON_STEP = 1.2e-7
 _LEAVES = 0.25  # share of the orbits of a growing map that leave 126 bits before they drop
 _START = 1e-6
+# More candidates than anybody examines; floats would overflow far beyond.
+_COUNTLESS = 10**250
 
 
 def sweep_seconds(multiplier: int, offset: int, shape: Profile) -> float:
@@ -42,7 +44,7 @@ def sweep_seconds(multiplier: int, offset: int, shape: Profile) -> float:
     while low < shape.high:
         high = min(shape.high, max(2 * low, _BLOCK_START // 16))
         length, _ = shape.limits(low + 1)
-        total += (high - low) / 2 * _each(multiplier, offset, low, high, length)
+        total += min(high - low, _COUNTLESS) / 2 * _each(multiplier, offset, low, high, length)
         low = high
     return total
 

@@ -23,7 +23,9 @@ MAY = {
     "solvers": {"exact", "residues", "engines", "cycle_encodings", "solvers"},
     "ledger": {"ledger"},
     "settle": {"exact", "residues", "engines", "cycle_encodings", "solvers", "ledger", "settle"},
-    "cli": {"exact", "settle", "ledger", "solvers", "cli"},
+    "exports": {"exact", "residues", "cycle_encodings", "exports"},
+    "trials": {"exact", "residues", "engines", "cycle_encodings", "solvers", "settle", "exports", "trials"},
+    "cli": {"exact", "settle", "ledger", "cycle_encodings", "solvers", "exports", "trials", "cli"},
 }
 
 
