@@ -12,6 +12,7 @@ import typer
 
 from solverkit import __version__
 from solverkit.cli.encode_command import encode
+from solverkit.cli.explain_command import explain
 from solverkit.cli.trial_command import trial
 from solverkit.cli.window_options import takes_window
 from solverkit.errors import InputError
@@ -188,6 +189,7 @@ def settle(
     return settlement.exit_status
 
 
+_app.command(epilog="Example: [bold]solverkit explain --map 3,1 --cell 24,15[/bold]")(explain)
 _app.command(epilog="Example: [bold]solverkit encode --map 3,5 --cell 27,17 --to cell.cnf[/bold]")(encode)
 _app.command(
     epilog="Example: [bold]solverkit trial --map 3,5 --lengths 20..30 --encodings orbit --solvers glucose4[/bold]"

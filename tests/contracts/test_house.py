@@ -25,7 +25,8 @@ MAY = {
     "settle": {"exact", "residues", "engines", "cycle_encodings", "solvers", "ledger", "settle"},
     "exports": {"exact", "residues", "cycle_encodings", "exports"},
     "trials": {"exact", "residues", "engines", "cycle_encodings", "solvers", "settle", "exports", "trials"},
-    "cli": {"exact", "settle", "ledger", "cycle_encodings", "solvers", "exports", "trials", "cli"},
+    "explain": {"exact", "cycle_encodings", "solvers", "explain"},
+    "cli": {"exact", "settle", "ledger", "cycle_encodings", "solvers", "exports", "trials", "explain", "cli"},
 }
 
 
