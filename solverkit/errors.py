@@ -1,6 +1,14 @@
 """The one exception tree; every error says what was given, what is allowed and what to do."""
 
-__all__ = ["CapacityError", "ContradictionError", "DossierError", "InputError", "MissingPartError", "SolverkitError"]
+__all__ = [
+    "CapacityError",
+    "ContradictionError",
+    "DossierError",
+    "FileError",
+    "InputError",
+    "MissingPartError",
+    "SolverkitError",
+]
 
 _SHOWN = 60
 
@@ -41,25 +49,32 @@ class InputError(SolverkitError, ValueError):
         return (type(self), (self.field, self.given, self.allowed))
 
 
-class DossierError(SolverkitError, OSError):
-    """A dossier can't be opened, read or written.
+class FileError(SolverkitError, OSError):
+    """A file can't be read or written.
 
     Attributes:
-        path: the folder or file.
-        reason: what is wrong and what to do.
+        path: the file.
+        reason: what is wrong.
     """
 
     exit_status = 2
 
     def __init__(self, path: object, reason: str) -> None:
         self.path, self.reason = str(path), reason
-        super().__init__(f"dossier {self.path}: {reason}")
+        super().__init__(f"{self.path}: {reason}")
 
     def __str__(self) -> str:
-        return f"dossier {self.path}: {self.reason}"
+        return f"{self.path}: {self.reason}"
 
     def __reduce__(self) -> tuple[type, tuple[str, str]]:
         return (type(self), (self.path, self.reason))
+
+
+class DossierError(FileError):
+    """A dossier can't be opened, read or written; ``path`` may be its folder, ``reason`` says what to do."""
+
+    def __str__(self) -> str:
+        return f"dossier {self.path}: {self.reason}"
 
 
 class CapacityError(SolverkitError, OverflowError):

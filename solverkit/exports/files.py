@@ -10,7 +10,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from cycle_encodings._formula import Form, Statement
-from solverkit.errors import InputError, SolverkitError
+from solverkit.errors import FileError, InputError, SolverkitError
 from solverkit.exports.cp_text import cp_lines
 from solverkit.exports.dimacs import dimacs_lines
 from solverkit.exports.opb import inequality_lines, opb_lines
@@ -21,28 +21,7 @@ if TYPE_CHECKING:
 
     from solverkit.window import Cell
 
-__all__ = ["FORMATS", "FileError", "Format", "format_of", "write_statement", "write_whole"]
-
-
-class FileError(SolverkitError, OSError):
-    """A file can't be read or written.
-
-    Attributes:
-        path: the file.
-        reason: what is wrong.
-    """
-
-    exit_status = 2
-
-    def __init__(self, path: object, reason: str) -> None:
-        self.path, self.reason = str(path), reason
-        super().__init__(f"{self.path}: {reason}")
-
-    def __str__(self) -> str:
-        return f"{self.path}: {self.reason}"
-
-    def __reduce__(self) -> tuple[type, tuple[str, str]]:
-        return (type(self), (self.path, self.reason))
+__all__ = ["FORMATS", "Format", "format_of", "write_statement", "write_whole"]
 
 
 @dataclass(frozen=True, slots=True)

@@ -6,8 +6,8 @@ import json
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
-from solverkit.errors import InputError
-from solverkit.exports.files import FileError, write_whole
+from solverkit.errors import FileError, InputError
+from solverkit.exports.files import write_whole
 from solverkit.numerals import json_integer, parse_integer
 from solverkit.window import MAX_LENGTH, Cell
 

@@ -6,8 +6,7 @@ import json
 import os
 from typing import TYPE_CHECKING, Any
 
-from solverkit.errors import InputError
-from solverkit.exports.files import FileError
+from solverkit.errors import FileError, InputError
 
 if TYPE_CHECKING:
     from pathlib import Path

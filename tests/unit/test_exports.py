@@ -12,11 +12,11 @@ import pytest
 
 from cycle_encodings._formula import Form
 from cycle_encodings.orbit import ENCODING
-from solverkit.errors import CapacityError, InputError
+from solverkit.errors import CapacityError, FileError, InputError
 from solverkit.exports import files
 from solverkit.exports.cp_text import cp_lines
 from solverkit.exports.dimacs import dimacs_lines
-from solverkit.exports.files import FileError, format_of, write_statement, write_whole
+from solverkit.exports.files import format_of, write_statement, write_whole
 from solverkit.exports.opb import expanded, inequality_lines, opb_lines
 from solverkit.exports.smtlib import smtlib_lines
 from solverkit.window import Cell

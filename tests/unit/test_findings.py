@@ -76,12 +76,13 @@ def test_findings_refuse_parts_that_do_not_fit():
 
 
 def test_errors_keep_their_values_over_a_process_border():
-    from solverkit.errors import CapacityError, DossierError, MissingPartError
+    from solverkit.errors import CapacityError, DossierError, FileError, MissingPartError
 
     for error in (
         InputError("k", -1, "1 or more"),
         CapacityError("m", "r"),
         DossierError("p", "r"),
+        FileError("p", "r"),
         MissingPartError("p", "r"),
     ):
         again = pickle.loads(pickle.dumps(error))

@@ -10,10 +10,9 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from solverkit.errors import InputError
+from solverkit.errors import FileError, InputError
 from solverkit.exact.bounds import balanced_bound
 from solverkit.exact.reduction import reduced
-from solverkit.exports.files import FileError
 from solverkit.solvers._isolation import Answer
 from solverkit.trials import harness
 from solverkit.trials import results as results_module
