@@ -45,8 +45,8 @@ class Sweep:
         if seconds <= _LONGEST:
             return None
         return (
-            f"{_profile((cell,)).candidates:.2e} candidates up to {cell_bound(cell):.3e} would take about "
-            f"{seconds:.1e} s on one core; at most {_LONGEST:.0e} s are allowed"
+            f"about 10^{_tens(_profile((cell,)).candidates)} candidates up to about 10^{_tens(cell_bound(cell))} "
+            f"would take about {seconds:.1e} s on one core; at most {_LONGEST:.0e} s are allowed"
         )
 
     def estimate(self, cells: Sequence[Cell]) -> float:
@@ -116,6 +116,11 @@ def _asked(piece: Piece, n: int, k: int, x: int) -> bool:
     if len(piece.detail) > 2:
         return n > piece.cells[0].above and k <= piece.detail[2] and x <= piece.detail[3]
     return any((cell.length, cell.odd) == (k, x) and n > cell.above for cell in piece.cells)
+
+
+def _tens(number: int) -> int:
+    """Return about log10 of a number that may be too large for a float."""
+    return number.bit_length() * 30103 // 100000
 
 
 @lru_cache(maxsize=1 << 16)

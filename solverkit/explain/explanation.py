@@ -4,8 +4,6 @@ from __future__ import annotations
 
 import contextlib
 import multiprocessing
-import os
-import signal
 import time
 from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING
@@ -13,7 +11,7 @@ from typing import TYPE_CHECKING
 from solverkit.errors import ContradictionError
 from solverkit.explain.arithmetic import Exclusion, arithmetic_exclusion
 from solverkit.findings import Cycle, Verdict
-from solverkit.solvers._isolation import die_with_parent
+from solverkit.solvers._isolation import become_solver_child
 
 if TYPE_CHECKING:
     from multiprocessing.connection import Connection
@@ -190,10 +188,7 @@ def _rank(explained: Explained) -> tuple[int, list[int]]:
 
 
 def _serve(pipe: Connection, cell: Cell, all_cores: bool) -> None:
-    die_with_parent()
-    signal.signal(signal.SIGINT, signal.SIG_IGN)
-    # Native code writes notes to standard output, where the caller may be printing JSON.
-    os.dup2(2, 1)
+    become_solver_child()
     with contextlib.suppress(BrokenPipeError, ConnectionResetError):
         try:
             _work(pipe, cell, all_cores=all_cores)

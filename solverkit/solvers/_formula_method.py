@@ -21,7 +21,7 @@ if TYPE_CHECKING:
     from cycle_encodings._formula import Encoder
     from solverkit.window import Cell
 
-__all__ = ["DEFAULTS", "FormulaMethod", "formula_method"]
+__all__ = ["DEFAULTS", "MOST_CLAUSES", "FormulaMethod", "formula_method"]
 
 #: Kind of solver -> the encoding and the solver that are used when none is named.
 DEFAULTS = {
@@ -30,7 +30,11 @@ DEFAULTS = {
     Kind.MIP: ("inequalities", "highs"),
     Kind.PB: ("inequalities", "exact"),
 }
-_MOST_CLAUSES = 50_000_000
+#: No formula with more clauses or rows is built.
+MOST_CLAUSES = 50_000_000
+
+# More candidates than any search gets through; a float would overflow far beyond.
+_COUNTLESS = 10**200
 
 _process = SolverProcess()
 
@@ -67,8 +71,8 @@ class FormulaMethod:
         if cell.length > EXACT_LENGTH:
             return f"length {cell.length} is above {EXACT_LENGTH}, the limit of the encodings"
         size = self._encoder().size(cell)
-        if size > _MOST_CLAUSES:
-            return f"about {size} clauses, more than {_MOST_CLAUSES}"
+        if size > MOST_CLAUSES:
+            return f"about {size} clauses or rows, more than {MOST_CLAUSES}"
         return None
 
     def estimate(self, cells: Sequence[Cell]) -> float:
@@ -79,7 +83,7 @@ class FormulaMethod:
         """
         seconds = 0.0
         for cell in cells:
-            candidates = max(0, balanced_bound(cell) - cell.above)
+            candidates = min(max(0, balanced_bound(cell) - cell.above), _COUNTLESS)
             cycles = lyndon_count(cell.length, cell.odd) * abs(cell.offset) // abs(cell.determinant)
             seconds += 0.004 + self._encoder().size(cell) * 1.2e-6 + candidates * cell.length * 2e-7
             seconds += min(cycles, 1e15) * cell.length * 2e-5

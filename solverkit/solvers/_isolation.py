@@ -15,6 +15,7 @@ import signal
 import sys
 import time
 from dataclasses import dataclass
+from enum import StrEnum
 from typing import TYPE_CHECKING, Any
 
 from solverkit.registry import load
@@ -25,7 +26,7 @@ if TYPE_CHECKING:
 
     from solverkit.window import Cell
 
-__all__ = ["Answer", "SolverProcess", "die_with_parent"]
+__all__ = ["Answer", "Ending", "SolverProcess", "become_solver_child", "die_with_parent"]
 
 _PR_SET_PDEATHSIG = 1
 
@@ -36,21 +37,43 @@ def die_with_parent() -> None:
         ctypes.CDLL(None, use_errno=True).prctl(_PR_SET_PDEATHSIG, signal.SIGKILL)
 
 
+def become_solver_child() -> None:
+    """Make this process one that serves solvers: it ends with its parent, leaves Ctrl-C to it, and prints nothing."""
+    die_with_parent()
+    signal.signal(signal.SIGINT, signal.SIG_IGN)
+    # Native code writes notes to standard output, where the caller may be printing JSON.
+    os.dup2(2, 1)
+
+
+class Ending(StrEnum):
+    """How a request ended: all cycles listed, out of time, "infeasible" without a proof, or otherwise."""
+
+    COMPLETE = "complete"
+    LIMIT = "limit"
+    INEXACT = "inexact"
+    FAILED = "failed"
+
+
 @dataclass(frozen=True, slots=True)
 class Answer:
     """What one request gave.
 
     Args:
         least: least elements found, in the order the solver found them.
-        complete: whether the formula then had no further model.
-        reason: why not, when incomplete.
-        statistics: sizes and times.
+        ending: how it ended.
+        reason: why the list is not complete, or empty.
+        statistics: sizes and times, as far as they are known.
     """
 
     least: tuple[int, ...]
-    complete: bool
+    ending: Ending
     reason: str
     statistics: dict[str, int | float | str]
+
+    @property
+    def complete(self) -> bool:
+        """Whether the formula had no further model."""
+        return self.ending is Ending.COMPLETE
 
 
 class SolverProcess:
@@ -72,6 +95,11 @@ class SolverProcess:
         """
         pipe = self._started()
         least: list[int] = []
+        statistics: dict[str, Any] = {}
+
+        def ended(ending: Ending, reason: str = "") -> Answer:
+            return Answer(tuple(least), ending, reason, statistics)
+
         deadline = None if seconds is None else time.monotonic() + seconds
         try:
             pipe.send((cell, encoding, solver, memory))
@@ -79,23 +107,25 @@ class SolverProcess:
                 left = None if deadline is None else max(0.0, deadline - time.monotonic())
                 if not pipe.poll(left):
                     self.close()
-                    return Answer(tuple(least), False, f"no answer within {seconds:g} s", {})
+                    return ended(Ending.LIMIT, f"no answer within {seconds:g} s")
                 kind, content = pipe.recv()
                 if kind == "least":
                     least.append(content)
+                elif kind == "encoded":
+                    statistics |= content
                 elif kind == "done":
-                    return Answer(tuple(least), True, "", content)
+                    statistics |= content
+                    return ended(Ending.COMPLETE)
                 elif kind == "inexact":
-                    return Answer(
-                        tuple(least), False, "infeasible in floating-point arithmetic, which proves nothing", content
-                    )
+                    statistics |= content
+                    return ended(Ending.INEXACT, "infeasible in floating-point arithmetic, which proves nothing")
                 else:
                     self.close()
-                    return Answer(tuple(least), False, content, {})
+                    return ended(Ending.FAILED, content)
         except (EOFError, ConnectionError):
             code = self._exit_code()
             self.close()
-            return Answer(tuple(least), False, f"the solver process ended with status {code}", {})
+            return ended(Ending.FAILED, f"the solver process ended with status {code}")
 
     def _started(self) -> Connection:
         if self._pipe is None or self._process is None or not self._process.is_alive():
@@ -125,17 +155,13 @@ class SolverProcess:
 
 
 def _serve(pipe: Connection) -> None:
-    die_with_parent()
-    signal.signal(signal.SIGINT, signal.SIG_IGN)
-    # Native code writes notes to standard output, where the caller may be printing JSON.
-    os.dup2(2, 1)
+    become_solver_child()
     with contextlib.suppress(EOFError, BrokenPipeError, ConnectionResetError):
         while True:
             cell, encoding, solver, memory = pipe.recv()
             try:
                 _limit_memory(memory)
-                exact = load("solvers", solver).abilities.exact
-                pipe.send(("done" if exact else "inexact", _solve(pipe, cell, encoding, solver)))
+                _solve(pipe, cell, encoding, solver)
             except MemoryError:
                 pipe.send(("failed", "the memory limit was reached"))
             except (EOFError, BrokenPipeError):
@@ -149,17 +175,15 @@ def _limit_memory(memory: int | None) -> None:
     resource.setrlimit(resource.RLIMIT_AS, (hard if memory is None else memory, hard))
 
 
-def _solve(pipe: Connection, cell: Cell, encoding: str, solver: str) -> dict[str, Any]:
+def _solve(pipe: Connection, cell: Cell, encoding: str, solver: str) -> None:
     begun = time.perf_counter()
     formula = load("encodings", encoding).encode(cell)
     encoded = time.perf_counter()
     back_end = load("solvers", solver)
+    sizes = {**formula.sizes(), "digest": formula.digest(), "encode_s": round(encoded - begun, 6)}
+    pipe.send(("encoded", sizes | {"solver": back_end.version}))
+    begun = time.perf_counter()
     for least in back_end.least_elements(formula):
         pipe.send(("least", least))
-    return {
-        **formula.sizes(),
-        "digest": formula.digest(),
-        "encode_s": round(encoded - begun, 6),
-        "solve_s": round(time.perf_counter() - encoded, 6),
-        "solver": back_end.version,
-    }
+    spent = {"solve_s": round(time.perf_counter() - begun, 6)}
+    pipe.send(("done" if back_end.abilities.exact else "inexact", spent))

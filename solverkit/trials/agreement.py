@@ -5,6 +5,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
+from solverkit.errors import ContradictionError
+from solverkit.findings import Cycle
 from solverkit.methods import Budget, Method, merged
 from solverkit.registry import load, parts
 
@@ -85,12 +87,8 @@ def disagreement(cell: Cell, least: Sequence[int], complete: bool, reference: Ex
 
 
 def _belongs(cell: Cell, least: int) -> bool:
-    """Tell by iteration whether ``least`` is the least element of a cycle of exactly this length and odd count."""
-    if least <= cell.above:
+    """Tell by iteration whether ``least`` is the least element of a cycle of the cell."""
+    try:
+        return Cycle(cell.multiplier, cell.offset, least, cell.length).lies_in(cell)
+    except ContradictionError:
         return False
-    orbit = cell.map.orbit(least, cell.length)
-    return (
-        orbit[-1] == least
-        and all(value > least for value in orbit[1:-1])
-        and sum(value & 1 for value in orbit[:-1]) == cell.odd
-    )

@@ -18,6 +18,7 @@ from typing import TYPE_CHECKING, Any
 from solverkit.errors import InputError
 from solverkit.numerals import json_integer
 from solverkit.registry import load
+from solverkit.solvers._formula_method import FormulaMethod
 from solverkit.solvers._isolation import SolverProcess
 from solverkit.trials.agreement import Expected, disagreement, expected
 from solverkit.trials.results import ResultFile, run_key
@@ -28,20 +29,14 @@ if TYPE_CHECKING:
 
     from cycle_encodings._formula import Encoder
     from solverkit.solvers._contract import BackEnd
-    from solverkit.solvers._isolation import Answer
     from solverkit.trials.cells import BenchmarkCell
 
-__all__ = ["Limits", "Pair", "Run", "Status", "matched", "order", "perform"]
+__all__ = ["REFUSED", "Limits", "Pair", "Run", "matched", "order", "perform"]
 
-_MOST_CLAUSES = 50_000_000
+#: Status of a run that was not begun, beside those of `Ending`.
+REFUSED = "refused"
 _WARM_UP = Cell(3, 1, 2, 1)
 _WARM_UP_SECONDS = 120.0
-
-
-class Status:
-    """How a run ended: all cycles listed, too long, ended otherwise, without a proof, or not begun."""
-
-    COMPLETE, LIMIT, FAILED, INEXACT, REFUSED = "complete", "limit", "failed", "inexact", "refused"
 
 
 @dataclass(frozen=True, slots=True, order=True)
@@ -178,12 +173,11 @@ def _identity(run: Run, limits: Limits) -> dict[str, Any]:
 
 def _measured(run: Run, limits: Limits, reference: Expected | None) -> dict[str, Any]:
     cell = run.cell.cell
-    encoder: Encoder = load("encodings", run.pair.encoding)
-    size = encoder.size(cell)
-    if size > _MOST_CLAUSES:
+    refusal = FormulaMethod(run.pair.encoding, run.pair.solver).refusal(cell)
+    if refusal is not None:
         return {
-            "status": Status.REFUSED,
-            "reason": f"about {size} clauses or rows, more than {_MOST_CLAUSES}",
+            "status": REFUSED,
+            "reason": refusal,
             "found": 0,
             "wall_s": 0.0,
             "disagreement": "",
@@ -200,7 +194,7 @@ def _measured(run: Run, limits: Limits, reference: Expected | None) -> dict[str,
     if not problem and answer.complete and run.cell.cycles not in {None, len(answer.least)}:
         problem = f"{cell.map} k = {cell.length}, x = {cell.odd}: {len(answer.least)} cycles, {run.cell.cycles} on file"
     return {
-        "status": _status(answer),
+        "status": answer.ending.value,
         "reason": answer.reason,
         "found": len(answer.least),
         "wall_s": round(seconds, 6),
@@ -208,11 +202,3 @@ def _measured(run: Run, limits: Limits, reference: Expected | None) -> dict[str,
         "checked": None if reference is None else reference.method,
         "disagreement": problem,
     }
-
-
-def _status(answer: Answer) -> str:
-    if answer.complete:
-        return Status.COMPLETE
-    if answer.statistics:
-        return Status.INEXACT
-    return Status.LIMIT if answer.reason.startswith("no answer within") else Status.FAILED

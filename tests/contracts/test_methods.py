@@ -129,3 +129,11 @@ if os.environ.get("SOLVERKIT_REQUIRE_ALL"):
 
     def test_nothing_optional_is_missing_where_everything_is_required():
         assert len(SOLVERS) >= 15
+
+
+@pytest.mark.parametrize("name", [*ENGINES, *PAIRS])
+def test_cells_with_bounds_beyond_every_float_are_refused_or_estimated(name):
+    cell = Cell(3, 2**4000 + 1, 9000, 4000)
+    method = method_named(name)
+    assert method.refusal(cell) is not None
+    assert method.estimate([cell]) > 1e9

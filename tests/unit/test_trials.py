@@ -13,7 +13,7 @@ from hypothesis import strategies as st
 from solverkit.errors import FileError, InputError
 from solverkit.exact.bounds import balanced_bound
 from solverkit.exact.reduction import reduced
-from solverkit.solvers._isolation import Answer
+from solverkit.solvers._isolation import Answer, Ending
 from solverkit.trials import harness
 from solverkit.trials import results as results_module
 from solverkit.trials.agreement import Expected, disagreement, expected
@@ -245,7 +245,7 @@ class Answers:
     """Stands in for a solver process: what it answers is set beforehand, what it was asked is kept."""
 
     asked = None
-    answer_ = Answer((19, 23), True, "", {"encode_s": 0.1, "solve_s": 0.2, "variables": 3, "clauses": 4})
+    answer_ = Answer((19, 23), Ending.COMPLETE, "", {"encode_s": 0.1, "solve_s": 0.2, "variables": 3, "clauses": 4})
 
     def answer(self, cell, encoding, solver, seconds, memory):
         Answers.asked.append((cell, encoding, solver, seconds, memory))
@@ -328,7 +328,7 @@ def test_a_full_disk_is_one_line_and_the_file_goes_on_later(answers, tmp_path, m
 
 def test_disagreements_are_shouted_and_kept_also_when_the_file_is_read_again(answers, tmp_path):
     path = tmp_path / "results.jsonl"
-    answers.answer_ = Answer((19,), True, "", Answers.answer_.statistics)
+    answers.answer_ = Answer((19,), Ending.COMPLETE, "", Answers.answer_.statistics)
     for _ in range(2):
         shouted = []
         perform(RUNS[:1], LIMITS, 1, ResultFile(path), shout=shouted.append)
@@ -347,9 +347,9 @@ def test_a_number_of_cycles_on_file_is_compared_too(answers):
 @pytest.mark.parametrize(
     ("answer", "status"),
     [
-        (Answer((19,), False, "no answer within 60 s", {}), "limit"),
-        (Answer((), False, "infeasible in floating-point arithmetic", {"solve_s": 1.0}), "inexact"),
-        (Answer((), False, "the solver process ended with status -11", {}), "failed"),
+        (Answer((19,), Ending.LIMIT, "no answer within 60 s", {}), "limit"),
+        (Answer((), Ending.INEXACT, "infeasible in floating-point arithmetic", {"solve_s": 1.0}), "inexact"),
+        (Answer((), Ending.FAILED, "the solver process ended with status -11", {}), "failed"),
     ],
 )  # fmt: skip
 def test_runs_that_do_not_complete_say_how_they_ended(answers, answer, status):
