@@ -131,9 +131,11 @@ class SolverProcess:
         if self._pipe is None or self._process is None or not self._process.is_alive():
             self.close()
             context = multiprocessing.get_context("spawn")
-            self._pipe, theirs = context.Pipe()
-            self._process = context.Process(target=_serve, args=(theirs,), daemon=True)
-            self._process.start()
+            ours, theirs = context.Pipe()
+            process = context.Process(target=_serve, args=(theirs,), daemon=True)
+            # Ctrl-C may come while it starts; `close` then has nothing to end.
+            process.start()
+            self._process, self._pipe = process, ours
             theirs.close()
         return self._pipe
 

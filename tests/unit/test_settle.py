@@ -391,3 +391,19 @@ def _complete_lists(path):
     finally:
         connection.close()
     return {tuple(row[:6]): (json.loads(row[6])[0:], row[7]) for row in rows}
+
+
+def test_an_interrupt_while_a_solver_starts_stays_an_interrupt(monkeypatch):
+    """Closing what has not started must not hide it behind an error of its own."""
+    from multiprocessing.context import SpawnProcess
+
+    from solverkit.solvers._isolation import SolverProcess
+
+    def interrupted(self):
+        raise KeyboardInterrupt
+
+    monkeypatch.setattr(SpawnProcess, "start", interrupted)
+    process = SolverProcess()
+    with pytest.raises(KeyboardInterrupt):
+        process.answer(Cell(3, 1, 2, 1), "orbit", "glucose4", 1.0, None)
+    process.close()
