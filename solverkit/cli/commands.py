@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import json
 import sys
 from enum import StrEnum
 from pathlib import Path
@@ -13,6 +12,7 @@ import typer
 from solverkit import __version__
 from solverkit.cli.encode_command import encode
 from solverkit.cli.explain_command import explain
+from solverkit.cli.output import Format, FormatOption, print_json
 from solverkit.cli.trial_command import trial
 from solverkit.cli.window_options import takes_window
 from solverkit.errors import InputError
@@ -34,13 +34,6 @@ _app = typer.Typer(
 )
 
 
-class Format(StrEnum):
-    """How results are printed."""
-
-    TEXT = "text"
-    JSON = "json"
-
-
 class Bound(StrEnum):
     """Which bound of the least element decides."""
 
@@ -60,16 +53,10 @@ class Level(StrEnum):
 _MOST = 1e9
 _MOST_LISTED = 1_000_000
 
-FormatOption = Annotated[Format, typer.Option("--format", help="text, or one JSON document on standard output.")]
-
 
 def application() -> Callable[..., Any]:
     """Return the command line as a callable."""
     return typer.main.get_command(_app)
-
-
-def _print_json(document: object) -> None:
-    sys.stdout.write(json.dumps(document, indent=1, ensure_ascii=True) + "\n")
 
 
 def _version(value: bool) -> None:
@@ -108,7 +95,7 @@ def triage(
 
     examined = examine(window, Criterion(bound.value))
     if format is Format.JSON:
-        _print_json(triage_document(examined, 10_000 if most is None else most, methods_for))
+        print_json(triage_document(examined, 10_000 if most is None else most, methods_for))
     else:
         from solverkit.cli.tables import print_triage  # noqa: PLC0415
 
@@ -181,7 +168,7 @@ def settle(
         print(f"solverkit: interrupted; what is done is in {folder}, the same command continues it", file=sys.stderr)
         return 3
     if format is Format.JSON:
-        _print_json(settle_document(settlement, str(folder), all_cells=all_cells))
+        print_json(settle_document(settlement, str(folder), all_cells=all_cells))
     else:
         from solverkit.cli.tables import print_settlement  # noqa: PLC0415
 
@@ -203,7 +190,7 @@ def catalog(*, format: FormatOption = Format.TEXT) -> int:  # noqa: A002
 
     document = catalog_document()
     if format is Format.JSON:
-        _print_json(document)
+        print_json(document)
     else:
         from solverkit.cli.tables import print_catalog  # noqa: PLC0415
 

@@ -2,14 +2,21 @@
 
 from __future__ import annotations
 
-import json
 import sys
-from enum import StrEnum
 from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
-from solverkit.cli.encode_command import _only_length, _pair, _stated_cell, _table
+from solverkit.cli.one_cell import (
+    CellOption,
+    RawOption,
+    cell_entry,
+    cell_lengths,
+    reduced_unless,
+    stated_cell,
+    tell_cell,
+)
+from solverkit.cli.output import Format, FormatOption, print_json
 from solverkit.cli.window_defaults import lengths_from
 from solverkit.cli.window_options import takes_window
 from solverkit.errors import CapacityError, InputError
@@ -26,47 +33,30 @@ _MOST_CLAUSES = 5_000_000
 _MOST_LENGTH = 1_000
 
 
-class Format(StrEnum):
-    """How results are printed."""
-
-    TEXT = "text"
-    JSON = "json"
-
-
-@lengths_from("cell", _only_length)
+@lengths_from("cell", cell_lengths)
 @takes_window
 def explain(
     window: Window,
     *,
-    cell: Annotated[str, typer.Option("--cell", metavar="K,X", help="Length and odd count of the cell.")],
+    cell: CellOption,
     all_cores: Annotated[
         bool, typer.Option("--all-cores", help="All minimal cores, not only the smallest ones.")
     ] = False,
     seconds: Annotated[float, typer.Option("--seconds", metavar="S", min=0, help="Time limit.")] = 60.0,
-    raw: Annotated[
-        bool, typer.Option("--raw", help="The cell as it stands, not divided by what d and D share.")
-    ] = False,
-    format: Annotated[  # noqa: A002 - the option's own name
-        Format, typer.Option("--format", help="text, or one JSON document on standard output.")
-    ] = Format.TEXT,
+    raw: RawOption = False,
+    format: FormatOption = Format.TEXT,  # noqa: A002 - the option's own name
 ) -> int:
     """Why a cell is empty: minimal sets of conditions that exclude it, in words; or what it holds."""
-    from solverkit.exact.bounds import EXACT_LENGTH  # noqa: PLC0415 - parts load only when the command runs
-    from solverkit.exact.reduction import reduced  # noqa: PLC0415
-    from solverkit.explain.arithmetic import arithmetic_exclusion  # noqa: PLC0415
+    from solverkit.explain.arithmetic import arithmetic_exclusion  # noqa: PLC0415 - parts load only when used
     from solverkit.explain.explanation import explained  # noqa: PLC0415
     from solverkit.explain.words import sentences  # noqa: PLC0415
     from solverkit.findings import Verdict  # noqa: PLC0415
 
     if not 0 < seconds < _MOST_SECONDS:
         raise InputError("--seconds", seconds, f"a number above 0 and below {_MOST_SECONDS:g}")
-    length, odd = _pair(cell)
-    if length > EXACT_LENGTH:
-        raise CapacityError("explain", f"length {length} is above {EXACT_LENGTH}, the limit of exact bounds")
-    stated = _stated_cell(window, length, odd)
+    stated = stated_cell(window, cell, "explain")
     whole = stated.positive()
-    reduction = reduced(stated)
-    small, factor = (whole, int(stated.sign)) if raw else (reduction.cell, reduction.factor)
+    small, factor = reduced_unless(raw, stated)
     # What excludes the cell as it was asked for is said of that cell, not of the reduced one.
     first = arithmetic_exclusion(whole)
     if first is not None and (not all_cores or raw):
@@ -81,8 +71,8 @@ def explain(
     words = sentences(explanation)
     document = {
         "schema": 1,
-        "cell": _table(stated),
-        "explained": _table(small),
+        "cell": cell_entry(stated),
+        "explained": cell_entry(small),
         "factor": json_integer(factor),
         "status": explanation.status.value,
         "complete": explanation.complete,
@@ -93,9 +83,11 @@ def explain(
         "cycles": _cycles(explanation),
     }
     if format is Format.JSON:
-        sys.stdout.write(json.dumps(document, indent=1, ensure_ascii=True) + "\n")
+        print_json(document)
     else:
-        _tell(small, factor, words)
+        tell_cell(small, factor)
+        for line in words:
+            print(f"{line}.")
     return 0 if explanation.complete and explanation.status is not Verdict.OPEN else CapacityError.exit_status
 
 
@@ -136,13 +128,3 @@ def _cycles(explanation: Explanation) -> list[dict[str, Any]]:
     from solverkit.settle.documents import cycle_entry  # noqa: PLC0415
 
     return [cycle_entry(cycle) for cycle in explanation.cycles]
-
-
-def _tell(cell: Cell, factor: int, words: list[str]) -> None:
-    from solverkit.explain.arithmetic import number  # noqa: PLC0415
-
-    print(f"cell: {cell.map}, positive elements above {cell.above}, length {cell.length}, odd steps {cell.odd}")
-    if factor != 1:
-        print(f"its elements times {number(factor)} are those of the cell asked for")
-    for line in words:
-        print(f"{line}.")

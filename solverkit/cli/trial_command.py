@@ -2,15 +2,14 @@
 
 from __future__ import annotations
 
-import json
 import sys
 from contextlib import contextmanager
-from enum import StrEnum
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
+from solverkit.cli.output import Format, FormatOption, print_json
 from solverkit.cli.window_defaults import window_unless
 from solverkit.errors import ContradictionError, InputError
 
@@ -26,13 +25,6 @@ __all__ = ["trial"]
 
 _MOST_SECONDS = 1e9
 _MOST_CELLS = 10_000
-
-
-class Format(StrEnum):
-    """How results are printed."""
-
-    TEXT = "text"
-    JSON = "json"
 
 
 @window_unless("cells")
@@ -59,9 +51,7 @@ def trial(
         Path | None,
         typer.Option("--to", metavar="FILE.jsonl", help="One result a line; continued when it is there."),
     ] = None,
-    format: Annotated[  # noqa: A002 - the option's own name
-        Format, typer.Option("--format", help="text, or one JSON document on standard output.")
-    ] = Format.TEXT,
+    format: FormatOption = Format.TEXT,  # noqa: A002 - the option's own name
 ) -> int:
     """Time encodings with solvers on the live cells of a window or on the cells of a file, and check every answer."""
     from solverkit.trials.harness import Limits, matched, order, perform  # noqa: PLC0415 - loads solver libraries
@@ -91,7 +81,7 @@ def trial(
         return 3
     document = _document(records, base, chosen, skipped, seed, shouted)
     if format is Format.JSON:
-        sys.stdout.write(json.dumps(document, indent=1, ensure_ascii=True) + "\n")
+        print_json(document)
     else:
         from solverkit.cli.trial_tables import print_trial  # noqa: PLC0415
 

@@ -41,9 +41,9 @@ def _entry(part: Part) -> dict[str, Any]:
     if part.room == "engines":
         entry |= {"version": __version__, "family": value.family.value, "summary": _first_line(type(value))}
     elif part.room == "encodings":
-        entry |= {"version": __version__, "summary": value.summary}
+        entry |= {"version": __version__, "form": value.form.value, "summary": value.summary}
     else:
-        entry |= {"version": value.version, **asdict(value.abilities)}
+        entry |= {"version": value.version, "kind": value.kind.value, **asdict(value.abilities)}
     return entry
 
 

@@ -6,11 +6,11 @@ import time
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-from solverkit.errors import ContradictionError, InputError
+from solverkit.errors import ContradictionError, InputError, MissingPartError
 from solverkit.exact.bounds import EXACT_LENGTH, balanced_bound
 from solverkit.findings import Cycle
 from solverkit.methods import Budget, Family, Hit, Piece, PieceResult
-from solverkit.registry import load
+from solverkit.registry import load, parts
 from solverkit.solvers._contract import BackEnd, Kind
 from solverkit.solvers._isolation import SolverProcess
 from solverkit.words import lyndon_count
@@ -123,6 +123,7 @@ def formula_method(text: str) -> FormulaMethod:
 
     Raises:
         InputError: another form, an unknown encoding or solver, or two that do not go together.
+        MissingPartError: no solver of this kind.
     """
     head, at, solver = text.partition("@")
     kind, colon, encoding = head.partition(":")
@@ -130,6 +131,8 @@ def formula_method(text: str) -> FormulaMethod:
         kinds = ", ".join(Kind)
         raise InputError("methods", text, f"KIND, KIND:ENCODING, KIND@SOLVER or KIND:ENCODING@SOLVER with KIND {kinds}")
     usual_encoding, usual_solver = DEFAULTS[Kind(kind)]
+    if not any(part.value and part.value.kind == kind for part in parts("solvers")):
+        raise MissingPartError(f"a solver of the kind {kind}", "none is installed; see catalog")
     method = FormulaMethod(encoding or usual_encoding, solver or usual_solver)
     encoder: Encoder = load("encodings", method.encoding)
     back_end: BackEnd = load("solvers", method.solver)

@@ -241,3 +241,15 @@ def test_ctrl_c_keeps_what_is_done_and_the_same_command_goes_on(program, documen
     told = document(*command)
     assert told["pairs"][0]["solved"] == 2
     assert results.read_text().splitlines()[: len(done)] == done
+
+
+def test_a_form_that_no_encoding_has_is_named_with_status_4(run):
+    """CP-SAT text needs an encoding of the form constraints; methods of the kind cp need such a solver."""
+    for arguments, told in (
+        (("encode", "--map", "3,5", "--cell", "5,3", "--to", "a.textproto"), "an encoding of the form constraints"),
+        (("settle", "--map", "3,5", "--lengths", "1..5", "--methods", "cp"), "a solver of the kind cp"),
+    ):
+        code, out, err = run(*arguments)
+        assert (code, out) == (4, "")
+        assert told in err
+        assert err.count("\n") == 1

@@ -4,21 +4,18 @@ import inspect
 import json
 
 import pytest
-import typer
 
+from solverkit.cli.commands import application
 from solverkit.cli.explain_command import explain
 from solverkit.errors import InputError
 
-COMMAND = typer.Typer()
-COMMAND.command()(explain)
-# With a single command, typer runs it without its name.
-RUN = typer.main.get_command(COMMAND)
+RUN = application()
 
 
 @pytest.fixture
 def run(capsys):
     def called(*arguments):
-        status = RUN(args=list(arguments), standalone_mode=False)
+        status = RUN(args=["explain", *arguments], standalone_mode=False)
         out, err = capsys.readouterr()
         assert not err
         return status, out
