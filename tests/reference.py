@@ -2,6 +2,7 @@
 
 from itertools import combinations
 
+from solverkit.exact.bounds import balanced_bound
 from solverkit.maps import Map
 
 
@@ -33,3 +34,17 @@ def cycles_by_iteration(q, d, top, longest):
             if len(cycle) <= longest:
                 found.add((min(cycle), len(cycle), sum(v % 2 for v in cycle)))
     return found
+
+
+def conditions_met(cell, n):
+    """Names of the condition groups that the orbit of n meets, by iterating the map; the map itself always."""
+    orbit = Map(cell.multiplier, cell.offset).orbit(n, cell.length)
+    holds = {
+        "step": True,
+        "closing": orbit[-1] == n,
+        "odd count": sum(v % 2 for v in orbit[:-1]) == cell.odd,
+        "order": all(v > n for v in orbit[1:-1]),
+        "lower bound": n > cell.above,
+        "upper bound": n <= balanced_bound(cell),
+    }
+    return {group for group, holding in holds.items() if holding}

@@ -8,9 +8,8 @@ from pysat.solvers import Solver
 from cycle_encodings.grouped import ENCODING, Grouped, elements_of
 from solverkit.errors import InputError
 from solverkit.exact.bounds import balanced_bound
-from solverkit.maps import Map
 from solverkit.window import Cell, Sign
-from tests.reference import cycles_of_cell
+from tests.reference import conditions_met, cycles_of_cell
 
 GROUPS = ("step", "closing", "odd count", "order", "lower bound", "upper bound")
 
@@ -41,20 +40,7 @@ def solution_set(encoding, clauses, solver="cadical195"):
 def admitted(cell, width, *left_out):
     """The n_0 < 2^width that meet the conditions, by iterating the map from each."""
     kept = set(GROUPS) - set(left_out)
-    found = set()
-    for n in range(1 << width):
-        orbit = Map(cell.multiplier, cell.offset).orbit(n, cell.length)
-        holds = {
-            "step": True,
-            "closing": orbit[-1] == n,
-            "odd count": sum(v % 2 for v in orbit[:-1]) == cell.odd,
-            "order": all(v > n for v in orbit[1:-1]),
-            "lower bound": n > cell.above,
-            "upper bound": n <= balanced_bound(cell),
-        }
-        if all(holds[name] for name in kept):
-            found.add(n)
-    return found
+    return {n for n in range(1 << width) if kept <= conditions_met(cell, n)}
 
 
 def drawn_cells(count, seed, longest=12, most=100, widest=None):
