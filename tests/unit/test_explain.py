@@ -204,9 +204,9 @@ def test_a_bound_is_boasted_of_only_when_it_says_something():
     told = sentences(explained(Cell(3, 1, 27, 17, above=34), 60))
     assert told[0] == (
         "no cycle: the closing condition and the odd count 17 alone exclude it; the order (least element first), "
-        "the lower bound B = 34 and the upper bound U' = 108 were not needed."
+        "the lower bound B = 34 and the upper bound U' = 108 were not needed"
     )
-    assert told[-1] == "the same conditions exclude every n up to 163."
+    assert told[-1] == "the same conditions exclude every n up to 163"
     needed = explained(Cell(3, 1, 8, 5, above=2), 60, all_cores=True)
     assert any("the closing condition and the lower bound B = 2 alone" in line for line in sentences(needed))
     (entry,) = [each for each in needed.cores if each.core.groups == ("step", "closing", "lower bound")]
