@@ -109,4 +109,8 @@ class Encoder(Protocol):
         """Return the statement for a cell of positive elements; the same cell gives the same statement."""
 
     def size(self, cell: Cell) -> int:
-        """Return a rough number of clauses or rows, without building them."""
+        """Return a rough number of clauses or rows, without building them.
+
+        Raises:
+            CapacityError: the encoding cannot hold the cell.
+        """

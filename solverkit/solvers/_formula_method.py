@@ -6,7 +6,7 @@ import time
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-from solverkit.errors import ContradictionError, InputError, MissingPartError
+from solverkit.errors import CapacityError, ContradictionError, InputError, MissingPartError
 from solverkit.exact.bounds import EXACT_LENGTH, balanced_bound
 from solverkit.findings import Cycle
 from solverkit.methods import Budget, Family, Hit, Piece, PieceResult
@@ -70,10 +70,19 @@ class FormulaMethod:
         """Return why the cell can't be encoded, or None."""
         if cell.length > EXACT_LENGTH:
             return f"length {cell.length} is above {EXACT_LENGTH}, the limit of the encodings"
-        size = self._encoder().size(cell)
+        try:
+            size = self._encoder().size(cell)
+        except CapacityError as problem:
+            return str(problem)
         if size > MOST_CLAUSES:
             return f"about {size} clauses or rows, more than {MOST_CLAUSES}"
         return None
+
+    def _size(self, cell: Cell) -> int:
+        try:
+            return min(self._encoder().size(cell), _COUNTLESS)
+        except CapacityError:
+            return _COUNTLESS
 
     def estimate(self, cells: Sequence[Cell]) -> float:
         """Return seconds on one core.
@@ -85,7 +94,7 @@ class FormulaMethod:
         for cell in cells:
             candidates = min(max(0, balanced_bound(cell) - cell.above), _COUNTLESS)
             cycles = lyndon_count(cell.length, cell.odd) * abs(cell.offset) // abs(cell.determinant)
-            seconds += 0.004 + self._encoder().size(cell) * 1.2e-6 + candidates * cell.length * 2e-7
+            seconds += 0.004 + self._size(cell) * 1.2e-6 + candidates * cell.length * 2e-7
             seconds += min(cycles, 1e15) * cell.length * 2e-5
         return seconds
 
