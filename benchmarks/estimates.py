@@ -28,9 +28,9 @@ CASES = [
     ("matching", Cell(5, 1, 72, 31), 0),
     ("tally", Cell(3, D80 // (11 * 392851), 80, 50), None),
     ("census", Cell(3, 1, 38, 23), 0),
-    ("cnf:orbit@cadical195", Cell(3, -3191, 45, 29), 0),
-    ("cnf:orbit@cadical195", Cell(3, 1175, 59, 37), None),
-    ("cnf:orbit@cadical195", Cell(3, -23, 84, 53), 0),
+    ("cnf:composed@glucose4", Cell(3, -3191, 45, 29), 0),
+    ("cnf:composed@glucose4", Cell(3, 1175, 59, 37), None),
+    ("cnf:composed@glucose4", Cell(3, -23, 84, 53), 0),
 ]
 
 

@@ -152,9 +152,9 @@ class Builder:
             result.append(total)
         return result
 
-    def at_most(self, bits: Sequence[int], bound: int, unless: int | None = None) -> None:
-        """State that the number is ≤ ``bound``, or that the literal ``unless`` holds."""
-        head = [] if unless is None else [unless]
+    def at_most(self, bits: Sequence[int], bound: int, unless: Sequence[int] = ()) -> None:
+        """State that the number is ≤ ``bound``, or that one of the literals ``unless`` holds."""
+        head = list(unless)
         if bound < 0:
             self.add(*head)
             return
@@ -166,9 +166,9 @@ class Builder:
             else:
                 self.add(*head, -bits[place])
 
-    def at_least(self, bits: Sequence[int], bound: int, unless: int | None = None) -> None:
-        """State that the number is ≥ ``bound``, or that the literal ``unless`` holds."""
-        head = [] if unless is None else [unless]
+    def at_least(self, bits: Sequence[int], bound: int, unless: Sequence[int] = ()) -> None:
+        """State that the number is ≥ ``bound``, or that one of the literals ``unless`` holds."""
+        head = list(unless)
         if bound <= 0:
             return
         if bound >> len(bits):
@@ -180,9 +180,12 @@ class Builder:
             else:
                 head.append(bits[place])
 
-    def less(self, one: Sequence[int], two: Sequence[int]) -> None:
-        """State one < two, most significant bits first: a literal a place says that all above it are equal so far."""
-        equal = self.true
+    def less(self, one: Sequence[int], two: Sequence[int], when: int | None = None) -> None:
+        """State one < two, or that ``when`` fails.
+
+        Most significant bits first: a literal a place says that all above it are equal so far.
+        """
+        equal = self.true if when is None else when
         for place in range(max(len(one), len(two)) - 1, -1, -1):
             a = one[place] if place < len(one) else -self.true
             b = two[place] if place < len(two) else -self.true

@@ -141,7 +141,7 @@ def element_windows(cell: Cell, bound: int | None = None, rounds: int = 30) -> W
             if back is None:
                 continue
             rooms[i, j] = Room(back, Span(low, high), Span(beta_low, beta_high), Span(gamma_low, gamma_high))
-        if (0, 0) not in rooms or (k, x) not in rooms:
+        if len({i for i, _ in rooms}) <= k or (k, x) not in rooms:
             return empty
         if allowed is not None and len(rooms) == len(allowed):
             return Windows(cell, top, rooms)

@@ -34,7 +34,7 @@ _PROBES = {
     "matching": Cell(3, 1, 62, 39),
     "tally": Cell(3, (2**80 - 3**50) // (13 * 36791), 80, 50),
     "census": Cell(3, 1, 33, 20),
-    "cnf:orbit@cadical195": Cell(3, 425, 59, 37),
+    "cnf:composed@glucose4": Cell(3, 425, 59, 37),
 }
 _LEAST, _MOST = 0.125, 8.0
 

@@ -25,7 +25,7 @@ __all__ = ["DEFAULTS", "MOST_CLAUSES", "FormulaMethod", "formula_method"]
 
 #: Kind of solver -> the encoding and the solver that are used when none is named.
 DEFAULTS = {
-    Kind.CNF: ("orbit", "cadical195"),
+    Kind.CNF: ("composed", "glucose4"),
     Kind.CP: ("constraints", "cpsat"),
     Kind.MIP: ("inequalities", "highs"),
     Kind.PB: ("inequalities", "exact"),

@@ -10,7 +10,7 @@ from pathlib import Path
 
 import pytest
 
-from cycle_encodings.orbit import ENCODING
+from cycle_encodings.composed import ENCODING
 from solverkit.trials.cells import read_cells
 from solverkit.trials.harness import Pair, order
 from solverkit.window import Cell
@@ -68,7 +68,7 @@ def test_encode_reduces_and_reflects_by_itself_and_says_so(document, tmp_path):
 def test_encode_raw_takes_the_cell_as_it_stands(document, tmp_path):
     told = document("encode", "--map", "3,145", "--above", "100", "--cell", "27,17", "--raw", "--to", "a.opb")
     assert told["digest"] == ENCODING.encode(Cell(3, 145, 27, 17, above=100)).digest()
-    assert (told["factor"], told["encoding"]) == (1, "orbit")
+    assert (told["factor"], told["encoding"]) == (1, "composed")
     assert "* cell q=3 d=145 k=27 x=17 above=100\n" in (tmp_path / "a.opb").read_text()
 
 
@@ -241,15 +241,3 @@ def test_ctrl_c_keeps_what_is_done_and_the_same_command_goes_on(program, documen
     told = document(*command)
     assert told["pairs"][0]["solved"] == 2
     assert results.read_text().splitlines()[: len(done)] == done
-
-
-def test_a_form_that_no_encoding_has_is_named_with_status_4(run):
-    """CP-SAT text needs an encoding of the form constraints; methods of the kind cp need such a solver."""
-    for arguments, told in (
-        (("encode", "--map", "3,5", "--cell", "5,3", "--to", "a.textproto"), "an encoding of the form constraints"),
-        (("settle", "--map", "3,5", "--lengths", "1..5", "--methods", "cp"), "a solver of the kind cp"),
-    ):
-        code, out, err = run(*arguments)
-        assert (code, out) == (4, "")
-        assert told in err
-        assert err.count("\n") == 1

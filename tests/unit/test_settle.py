@@ -11,11 +11,12 @@ from dataclasses import replace
 
 import pytest
 
-from solverkit.errors import InputError
+from solverkit.errors import InputError, MissingPartError
 from solverkit.findings import Evidence, Verdict
 from solverkit.maps import Map
 from solverkit.methods import Budget, Listing, Piece, PieceResult
 from solverkit.numerals import Span
+from solverkit.registry import parts
 from solverkit.settle import choice, pool
 from solverkit.settle import run as settle_run
 from solverkit.settle.choice import method_named, plan
@@ -96,8 +97,16 @@ class TestChoice:
                 method_named(name)
 
     def test_names_of_pairs_are_completed(self):
-        assert method_named("cnf").name == "cnf:orbit@cadical195"
-        assert method_named("cnf@glucose4").name == "cnf:orbit@glucose4"
+        assert method_named("cnf").name == "cnf:composed@glucose4"
+        assert method_named("cnf@minisat22").name == "cnf:composed@minisat22"
+        assert method_named("cnf:orbit").name == "cnf:orbit@glucose4"
+        assert method_named("cp").name == "cp:constraints@cpsat"
+
+    def test_a_kind_without_a_solver_is_a_missing_part(self, monkeypatch):
+        left = tuple(part for part in parts("solvers") if part.name != "cpsat")
+        monkeypatch.setattr("solverkit.solvers._formula_method.parts", lambda room: left)
+        with pytest.raises(MissingPartError, match="a solver of the kind cp"):
+            method_named("cp")
 
     def test_every_cell_gets_two_families(self):
         cells = [live.reduction.cell for live in triage(Window((Map(3, 13),), Span(1, 30))).cells]
@@ -124,7 +133,7 @@ class TestChoice:
         vast = Cell(3, 1, 114208327604, 72057431991, above=2**68)
         told = plan([vast], {}, frozenset()).refused[vast]
         assert "sweep: " in told
-        assert "cnf:orbit@cadical195: " in told
+        assert "cnf:composed@glucose4: " in told
 
 
 class TestVerdicts:
@@ -138,7 +147,7 @@ class TestVerdicts:
 
     def test_two_families_confirm(self):
         found = self._finding(
-            Listing(self.CELL, "sweep", self.ALL, True), Listing(self.CELL, "cnf:orbit@cadical195", self.ALL, True)
+            Listing(self.CELL, "sweep", self.ALL, True), Listing(self.CELL, "cnf:composed@glucose4", self.ALL, True)
         )
         assert (found.verdict, found.evidence, len(found.cycles)) == (Verdict.FOUND, Evidence.CONFIRMED, 7)
 
@@ -207,7 +216,7 @@ def test_evidence_asked_for_and_not_reached_shows_in_the_exit_status(tmp_path):
 
 def test_a_time_limit_leaves_cells_open_and_a_later_run_settles_them(tmp_path):
     window = Window((Map(3, -3191),), Span(45, 45), Span(29, 29))
-    only = ("cnf:orbit@cadical195",)
+    only = ("cnf:composed@glucose4",)
     short = settle(window, tmp_path / "d", Settings(methods=only, budget=0.02, jobs=1))
     assert short.exit_status == 3
     assert "no answer within" in short.open_cells[0].reason

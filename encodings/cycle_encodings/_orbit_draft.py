@@ -1,0 +1,171 @@
+"""An orbit formula in the making: what every member of the family states, and what some add.
+
+`OrbitDraft` begins with the bits of every element and the range of the element after each step. Members then state the
+step in one of the ways of `_steps`, the closing, the odd counts, the order, and whatever they are there for; each
+method is one condition group. `finished` makes an encoding of it.
+"""
+
+from __future__ import annotations
+
+from itertools import pairwise
+from typing import TYPE_CHECKING
+
+from cycle_encodings._formula import Encoding
+from cycle_encodings._gates import Builder
+from solverkit.errors import InputError
+from solverkit.exact.windows import element_windows
+
+if TYPE_CHECKING:
+    from collections.abc import Callable, Sequence
+
+    from solverkit.exact.windows import Windows
+    from solverkit.window import Cell
+
+__all__ = ["OrbitDraft", "checked_option", "empty_formula", "member_literals", "windows_of"]
+
+
+def checked_option(name: str, value: int, low: int, high: int) -> None:
+    """Refuse an option outside its range.
+
+    Raises:
+        InputError: it is.
+    """
+    if isinstance(value, bool) or not isinstance(value, int) or not low <= value <= high:
+        raise InputError(name, value, f"an integer from {low} to {high}")
+
+
+def windows_of(cell: Cell, rounds: int = 30) -> Windows:
+    """Return the windows of a cell that an encoding is asked for.
+
+    Raises:
+        InputError: the cell asks for negative elements.
+    """
+    if cell.sign != 1:
+        raise InputError("cell", cell.sign.word, "a cell of positive elements; reflect it first")
+    return element_windows(cell, rounds=rounds)
+
+
+def empty_formula(cell: Cell, group: str = "ranges") -> Encoding:
+    """Return the formula of a cell that the condition ``group`` alone excludes: one clause that fails."""
+    builder = Builder()
+    builder.group(group)
+    builder.clauses.append((-builder.true,))
+    return Encoding(cell, builder.variables, tuple(builder.clauses), builder.finished(), (), builder.names)
+
+
+def member_literals(bits: Sequence[int], steps: int, residue: int) -> list[int]:
+    """Return the literals that hold together just when the number is ≡ ``residue`` mod 2^``steps``."""
+    return [bits[i] if residue >> i & 1 else -bits[i] for i in range(steps)]
+
+
+class OrbitDraft:
+    """A formula over the bits of the elements of a cycle.
+
+    Args:
+        windows: of a cell of positive elements, not empty.
+        first: the elements after 1 … ``first`` − 1 steps are left out, and with them the steps before ``first``.
+
+    Attributes:
+        builder: holds the clauses so far.
+        spans: range of the element after i steps, 0 ≤ i ≤ k.
+        elements: its bits, least significant first; the last list stands for the first element too. Empty when left
+            out.
+        states: (i, j) -> literal "j odd steps among the first i", once `count_odd` has run.
+    """
+
+    def __init__(self, windows: Windows, first: int = 0) -> None:
+        self.windows, self.cell, self.first = windows, windows.cell, first
+        self.builder = Builder()
+        self.spans = tuple(windows.elements(i) for i in range(self.cell.length + 1))
+        self.elements: tuple[list[int], ...] = tuple(
+            []
+            if 0 < i < first
+            else [self.builder.variable(f"n[{i}].{place}") for place in range(span.high.bit_length())]
+            for i, span in enumerate(self.spans)
+        )
+        self.states: dict[tuple[int, int], int] = {}
+
+    def steps(self, step: Callable[[Builder, Cell, Sequence[int], Sequence[int]], None]) -> None:
+        """State that each element is the image of the one before, by a rule of `_steps`."""
+        self.builder.group("step")
+        for bits, image in pairwise(self.elements[self.first :]):
+            step(self.builder, self.cell, bits, image)
+
+    def close(self) -> None:
+        """State that the last image is the first element."""
+        self.builder.group("closing")
+        self.identify(self.elements[-1], self.elements[0])
+
+    def identify(self, one: Sequence[int], two: Sequence[int]) -> None:
+        """State that two numbers are equal; the shorter one has zeros above."""
+        for place in range(max(len(one), len(two))):
+            a = one[place] if place < len(one) else -self.builder.true
+            b = two[place] if place < len(two) else -self.builder.true
+            self.builder.equal(a, b)
+
+    def count_odd(self) -> None:
+        """State which odd counts the prefixes have, one literal for each admissible state."""
+        builder, length = self.builder, self.cell.length
+        builder.group("odd count")
+        for i in range(self.first, length + 1):
+            counts = self.windows.odd_counts(i)
+            for j in counts:
+                self.states[i, j] = builder.true if len(counts) == 1 else builder.variable(f"odd[{i}]={j}")
+            if len(counts) > 1:
+                builder.exactly_one([self.states[i, j] for j in counts])
+        for (i, j), state in self.states.items():
+            if i < length:
+                odd = self.elements[i][0]
+                builder.add(-state, odd, self._state(i + 1, j))
+                builder.add(-state, -odd, self._state(i + 1, j + 1))
+            if i > self.first:
+                before = self.elements[i - 1]
+                builder.add(-state, before[0], self._state(i - 1, j))
+                builder.add(-state, -before[0], self._state(i - 1, j - 1))
+
+    def _state(self, i: int, j: int) -> int:
+        return self.states.get((i, j), -self.builder.true)
+
+    def put_least_first(self) -> None:
+        """State that every element after the first is above it: each cycle is one model, a repeated word none."""
+        self.builder.group("order")
+        for bits in self.elements[max(1, self.first) : -1]:
+            self.builder.less(self.elements[0], bits)
+
+    def bound(self) -> None:
+        """State the bounds of the least element, and the range of the element after each step."""
+        builder = self.builder
+        builder.group("lower bound")
+        builder.at_least(self.elements[0], self.cell.above + 1)
+        builder.group("upper bound")
+        builder.at_most(self.elements[0], self.windows.bound)
+        builder.group("ranges")
+        for bits, span in zip(self.elements, self.spans, strict=True):
+            if bits:
+                builder.at_least(bits, span.low)
+                builder.at_most(bits, span.high)
+
+    def guard(self) -> None:
+        """State, state by state, the exact ranges of the least element and of the element there."""
+        builder = self.builder
+        builder.group("ranges")
+        for (i, j), state in self.states.items():
+            room = self.windows.rooms[i, j]
+            sides = ((self.elements[i], room.element, self.spans[i]), (self.elements[0], room.least, self.spans[0]))
+            for bits, inner, outer in sides:
+                if inner.low > outer.low:
+                    builder.at_least(bits, inner.low, [-state])
+                if inner.high < outer.high:
+                    builder.at_most(bits, inner.high, [-state])
+
+    def finished(self) -> Encoding:
+        """Return the encoding, once nothing is added any more."""
+        builder = self.builder
+        return Encoding(
+            self.cell,
+            builder.variables,
+            tuple(builder.clauses),
+            builder.finished(),
+            tuple(self.elements[0]),
+            builder.names,
+        )

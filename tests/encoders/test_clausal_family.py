@@ -1,0 +1,229 @@
+"""The clausal encodings of the orbit, judged by their full solution sets."""
+
+import random
+from dataclasses import replace
+
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+from pysat.formula import CNF
+from pysat.solvers import Solver
+
+from cycle_encodings.channels import PRIMES, Channels
+from cycle_encodings.composed import Composed
+from cycle_encodings.macro import MacroSteps
+from cycle_encodings.orbit import Orbit
+from cycle_encodings.prefixes import Prefixes
+from cycle_encodings.serial import Serial
+from cycle_encodings.windows import ExactWindows
+from solverkit.errors import InputError
+from solverkit.methods import Budget
+from solverkit.registry import load
+from solverkit.window import Cell, Sign
+from tests.reference import cycles_of_cell
+from tests.strategies import cells
+
+FAMILY = [Orbit(), ExactWindows(), Serial(), Channels(), Prefixes(), MacroSteps(), Composed()]
+family = pytest.mark.parametrize("encoder", FAMILY, ids=[encoder.name for encoder in FAMILY])
+TYPICAL = [
+    Cell(3, 5, 27, 17),
+    Cell(3, -49, 30, 19),
+    Cell(3, 13, 46, 29),
+    Cell(3, -3191, 45, 29),
+    Cell(5, 8241, 84, 32),
+    Cell(7, -7857, 40, 16),
+    Cell(9, -281, 95, 30),
+    Cell(11, 45217, 69, 18),
+]
+
+
+def solution_set(encoding, solver="glucose4", left_out=(), most=2000):
+    """Least elements of all models, at most so many; one that comes twice fails at once."""
+    clauses = [
+        clause
+        for name, ranges in encoding.groups.items()
+        if name not in left_out
+        for start, stop in ranges
+        for clause in encoding.clauses[start:stop]
+    ]
+    found = []
+    with Solver(name=solver, bootstrap_with=clauses) as oracle:
+        while len(found) < most and oracle.solve():
+            least = encoding.decode(oracle.get_model())
+            assert least not in found
+            found.append(least)
+            oracle.add_clause(list(encoding.blocking(least)))
+    return sorted(found)
+
+
+def expected_of(cell):
+    return cycles_of_cell(cell.multiplier, cell.offset, cell.length, cell.odd, cell.above)
+
+
+def drawn_cells(count, seed):
+    """Random cells with q in 3 … 13, k ≤ 14, both signs, a third of them with an offset that divides D."""
+    rng = random.Random(seed)
+    while count:
+        q, k = rng.choice([3, 5, 7, 9, 11, 13]), rng.randint(1, 14)
+        x = rng.randint(1, k)
+        determinant = 2**k - q**x
+        size = rng.randrange(1, 400, 2)
+        if rng.random() < 0.35:
+            size = abs(determinant) // rng.choice([f for f in range(1, 50, 2) if determinant % f == 0])
+        cell = Cell(q, size if determinant > 0 else -size, k, x, rng.choice([0, 0, 0, 1, 5, 30]))
+        expected = expected_of(cell)
+        if len(expected) <= 150:
+            count -= 1
+            yield cell, expected
+
+
+@family
+def test_solution_sets_of_300_random_cells_equal_brute_force(encoder):
+    total = 0
+    for cell, expected in drawn_cells(300, seed=20):
+        assert solution_set(encoder.encode(cell)) == expected, cell
+        total += len(expected)
+    assert total > 300
+
+
+@pytest.mark.slow
+@family
+def test_solution_sets_of_3000_random_cells_equal_brute_force(encoder):
+    for cell, expected in drawn_cells(3000, seed=21):
+        assert solution_set(encoder.encode(cell), "cadical195") == expected, cell
+
+
+VARIANTS = st.one_of(
+    st.builds(Channels, st.lists(st.sampled_from(PRIMES), unique=True, max_size=3).map(tuple)),
+    st.builds(Prefixes, st.integers(0, 24), st.integers(1, 9), st.integers(0, 5)),
+    st.builds(MacroSteps, st.integers(1, 6)),
+    st.builds(Composed, st.sampled_from([1, 2, 16, 500, 65536]), st.integers(1, 9), st.booleans()),
+)
+
+
+@settings(max_examples=200)
+@given(cells(longest=10), VARIANTS)
+def test_options_change_the_formula_but_not_its_solutions(cell, encoder):
+    expected = expected_of(cell)
+    if len(expected) < 100:
+        assert solution_set(encoder.encode(cell)) == expected
+
+
+@family
+@settings(max_examples=40)
+@given(cell=cells(longest=10))
+def test_the_same_cell_gives_the_same_formula(encoder, cell):
+    assert encoder.encode(cell) == encoder.encode(replace(cell))
+    assert encoder.encode(cell).digest() == type(encoder)().encode(cell).digest()
+
+
+@family
+@settings(max_examples=40)
+@given(cell=cells(longest=10))
+def test_groups_name_every_clause_once(encoder, cell):
+    encoding = encoder.encode(cell)
+    covered = sorted(i for ranges in encoding.groups.values() for start, stop in ranges for i in range(start, stop))
+    assert covered == list(range(len(encoding.clauses)))
+    assert all(1 <= abs(literal) <= encoding.variables for clause in encoding.clauses for literal in clause)
+
+
+BASIC = {"constants", "step", "closing", "odd count", "order", "lower bound", "upper bound", "ranges"}
+
+
+@family
+def test_groups_of_a_cell_with_cycles_are_the_named_conditions(encoder):
+    extra = {"residues"} if encoder.name in {"channels", "prefixes", "composed"} else set()
+    assert set(encoder.encode(Cell(3, 5, 27, 17, above=3)).groups) == BASIC | extra
+
+
+@pytest.mark.parametrize("encoder", [Orbit(), MacroSteps(2)], ids=["orbit", "macro"])
+@pytest.mark.parametrize(
+    ("group", "cell"),
+    [
+        ("step", Cell(3, 1, 8, 5)),
+        ("closing", Cell(3, 5, 8, 5)),
+        ("order", Cell(3, 35, 8, 4)),
+        ("odd count", Cell(3, 17, 7, 3)),
+    ],
+)
+def test_a_condition_left_out_is_missed(group, cell, encoder):
+    """Each group does something of its own, once the ranges, which follow from all of them, are left out too."""
+    assert solution_set(encoder.encode(cell), left_out={group, "ranges"}, most=400) != expected_of(cell)
+
+
+@pytest.mark.parametrize("encoder", [Channels((3, 5)), Prefixes(), Serial()], ids=lambda encoder: encoder.name)
+def test_ranges_and_residues_follow_from_the_other_conditions(encoder):
+    for cell in [Cell(3, 35, 8, 4), Cell(3, 17, 7, 3), Cell(5, -129, 9, 4), Cell(3, 5, 11, 6)]:
+        assert solution_set(encoder.encode(cell), left_out={"ranges", "residues"}) == expected_of(cell)
+
+
+@family
+def test_larger_cells_have_the_cycles_that_the_sweep_finds(encoder):
+    """Least elements known from the engines, for cells that no brute force reaches."""
+    for cell in [Cell(3, 5, 27, 17), Cell(3, -193, 30, 19), Cell(3, 419, 28, 17), Cell(5, 8241, 30, 12)]:
+        sweep = load("engines", "sweep")
+        (batch,) = sweep.batches([cell])
+        found = [sweep.run(piece, Budget()) for piece in sweep.pieces(batch, 60)]
+        expected = sorted({hit.least for each in found for hit in each.hits if hit.length == cell.length})
+        assert solution_set(encoder.encode(cell), "cadical195") == expected
+
+
+def test_graph_nogoods_forbid_something():
+    """With x = k − 1 odd steps no element can be ≡ 0 mod 4, as two even steps would follow."""
+    cell = Cell(5, -(5**6 - 2**7), 7, 6)
+    with_graph, without = Prefixes(graph=2).encode(cell), Prefixes(graph=0).encode(cell)
+    assert len(with_graph.clauses) > len(without.clauses)
+    assert solution_set(with_graph) == solution_set(without) == expected_of(cell)
+
+
+def test_composed_leaves_out_the_first_steps():
+    encoding = Composed().encode(Cell(3, -3191, 45, 29))
+    assert {"n[0].0", "n[44].0"} < set(encoding.names.values())
+    assert "n[1].0" not in encoding.names.values()
+
+
+def test_formula_survives_dimacs(tmp_path):
+    """Written and read back by python-sat."""
+    encoding = Composed().encode(Cell(3, 5, 27, 17))
+    encoding.cnf().to_file(str(tmp_path / "cell.cnf"))
+    again = CNF(from_file=str(tmp_path / "cell.cnf"))
+    assert (again.nv, [tuple(c) for c in again.clauses]) == (encoding.variables, list(encoding.clauses))
+
+
+@family
+def test_rough_size_is_within_a_factor_of_three(encoder):
+    for cell in [*TYPICAL, Cell(3, 22156223, 99, 27), Cell(15, 2**40 + 1, 60, 10)]:
+        assert 1 / 3 < encoder.size(cell) / len(encoder.encode(cell).clauses) < 3, cell
+
+
+@family
+def test_rough_size_of_a_huge_cell_is_an_integer(encoder):
+    """k = 20,000 with a bound of 20,000 bits; nothing of that size is built."""
+    size = encoder.size(Cell(3, 2**20000 - 3**12000, 20000, 12000))
+    assert type(size) is int
+    assert size > 10**9
+
+
+@family
+def test_negative_elements_are_refused(encoder):
+    with pytest.raises(InputError, match="cell"):
+        encoder.encode(Cell(3, 1, 3, 2, sign=Sign.NEGATIVE))
+
+
+@pytest.mark.parametrize(
+    ("wrong", "field"),
+    [
+        (lambda: Channels((4,)), "primes"),
+        (lambda: Channels((3, 3)), "primes"),
+        (lambda: Prefixes(depth=25), "depth"),
+        (lambda: Prefixes(spare=0), "spare"),
+        (lambda: Prefixes(graph=9), "graph"),
+        (lambda: MacroSteps(0), "steps"),
+        (lambda: MacroSteps(True), "steps"),
+        (lambda: Composed(leaves=0), "leaves"),
+        (lambda: Composed(spare=65), "spare"),
+    ],
+)
+def test_options_outside_their_ranges_are_refused(wrong, field):
+    with pytest.raises(InputError, match=field):
+        wrong()
