@@ -27,13 +27,17 @@ from which step i can be odd:
   Σ (h_i + 2·a_i) variables and Σ (h_i·(c_i + 14) + 7·a_i) clauses over i < k, and for the join 20 clauses for each one
   of m and s after the first and each bit of t.
 
-Good for: any cell; of the word sides the modular one is the one that pays. On twelve cells with U' from 3·10^3 to 10^6,
-q = 3, 5, 7, the full list of solutions, encoding included, took in process time (geometric mean), against the same
-orbit without a word side / against the plain orbit encoding: modular 0.44 / 0.36 on MiniSat 2.2 (with 0.30 / 0.25 of
-the conflicts), 0.65 / 0.43 on Glucose 4, 0.98 / 0.58 on CaDiCaL 1.9.5, at worst 1.4 times the orbit alone; exact
-0.79 / 0.64 on MiniSat and 1.27 / 0.83 on Glucose (fewer conflicts too, but up to twice the formula), at worst 5 times.
-Part of it is steadiness: when the variables are renumbered at random the orbit alone is often as lucky, and the modular
-gain on MiniSat (six cells, three numberings) is 0.77 instead of 0.45.
+Good for: any cell; of the word sides the modular one is the one that pays, on MiniSat and Glucose. Geometric means of
+process time for the full list of solutions, encoding included, against the same orbit without a word side:
+
+- modular, 24 cells with U' from 2·10^3 to 10^6 that had no part in choosing the form: 0.62 on MiniSat 2.2 (0.44 of the
+  conflicts), 0.80 on Glucose 4; at worst 1.15 times;
+- modular, the twelve cells on which the form was chosen: 0.44 on MiniSat, 0.65 on Glucose, 0.98 on CaDiCaL 1.9.5, at
+  worst 1.4 times (0.36, 0.43 and 0.58 of the plain orbit encoding);
+- exact, the same twelve: 0.79 on MiniSat, 1.27 on Glucose, at worst 5 times: fewer conflicts, up to twice the formula.
+
+Part of it is steadiness: when variables are renumbered at random the orbit alone is often as lucky, and the modular
+gain on MiniSat (six of the twelve, three numberings) is 0.77 instead of 0.45.
 """
 
 from __future__ import annotations

@@ -88,7 +88,7 @@ def test_encode_writes_smtlib_from_the_cell(document, run, tmp_path):
 
 
 def test_encode_prints_what_it_wrote(run):
-    code, out, err = run("encode", "--map", "3,145", "--cell", "27,17", "--encoding", "orbit", "--to", "a.cnf")
+    code, out, err = run("encode", "--map", "3,145", "--cell", "27,17", "--encoding", "composed", "--to", "a.cnf")
     encoding = ENCODING.encode(Cell(3, 5, 27, 17))
     assert (code, err) == (0, "")
     assert f"a.cnf: DIMACS CNF, {encoding.variables:,} variables, {len(encoding.clauses):,} clauses, " in out

@@ -25,6 +25,7 @@ from solverkit.settle.run import Settings, settle
 from solverkit.settle.triage import Criterion, count_cells, triage
 from solverkit.settle.verdicts import conclude, lists_by_cell
 from solverkit.shape import shape_from_table
+from solverkit.solvers._formula_method import formula_method
 from solverkit.window import Cell, Sign, Window
 from tests.reference import cycles_by_iteration
 
@@ -106,7 +107,7 @@ class TestChoice:
         left = tuple(part for part in parts("solvers") if part.name != "cpsat")
         monkeypatch.setattr("solverkit.solvers._formula_method.parts", lambda room: left)
         with pytest.raises(MissingPartError, match="a solver of the kind cp"):
-            method_named("cp")
+            formula_method("cp")
 
     def test_every_cell_gets_two_families(self):
         cells = [live.reduction.cell for live in triage(Window((Map(3, 13),), Span(1, 30))).cells]
