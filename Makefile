@@ -33,7 +33,7 @@ types: setup
 check: lint types test
 
 bench: setup
-	for name in sweep matching tally_census estimates; do $(BIN)/python benchmarks/$$name.py || exit 1; done
+	for name in sweep matching tally_census estimates constraint_models clausal_encodings; do $(BIN)/python benchmarks/$$name.py || exit 1; done
 
 clean:
 	rm -rf $(VENV) .mypy_cache .pytest_cache .ruff_cache demo-dossier

@@ -41,7 +41,7 @@ class Statement(Protocol):
 
 @dataclass(frozen=True, slots=True)
 class Encoding:
-    """A formula whose models are the cycles of one cell, each once.
+    """A formula whose models are the cycles of one cell, each once up to auxiliary variables.
 
     Args:
         cell: of positive elements.

@@ -6,8 +6,8 @@ only the channel says at once.
 
 Condition groups: those of ``serial``, and ``residues``, which follows from them.
 
-Size, with w the width of n_0: about k·P + (w − 1)·P variables and k·(4·P + P·(P + 1)/2) + 4·w·P clauses for each prime
-on top of ``serial``.
+Size, with w the width of n_0: about (k + w − 1)·P variables, twice that for P > 6, and k·(4·P + P·(P + 1)/2) + 4·w·P
+clauses for each prime on top of ``serial``.
 
 Good for q = 3 with P = 3, which saves about a tenth to a quarter of the time; larger primes cost what they save.
 """

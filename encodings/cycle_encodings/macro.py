@@ -11,9 +11,9 @@ is compared with n_0 unless q^j'·n_i + d·β ≥ 2^t·n_i on the whole range of
 
 Condition groups: ``step``, ``closing``, ``odd count``, ``order``, ``lower bound``, ``upper bound``, ``ranges``.
 
-Size: for each macro-step at most 2^m classes, for each j up to m one multiplication of w − m bits by q, one choice and
-one addition of about w + j·log2 q bits, and up to 2^(m−1) comparisons with an addition each. About 2·k·W·a clauses of
-full adders for m = 3, a as in ``windows``: as many as steps one at a time, in fewer variables of elements.
+Size, with W the mean width of an element and o the number of ones of q after the first: for m = 3 about
+k·W·(5·o + 4) variables and k·W·(50·o + 20) clauses. A larger m has fewer blocks, each with more products and
+comparisons.
 
 Good for: comparison; single steps with prefix classes beat it.
 """
@@ -64,8 +64,8 @@ class MacroSteps:
             return 2
         width, ones = mean_width(cell), cell.multiplier.bit_count() - 1
         blocks = -(-cell.length // self.steps)
-        adders = self.steps * ones + 1 + (1 << self.steps >> 1)
-        return blocks * (width * (14 * adders + 4 * self.steps) + 8 * states_per_step(cell))
+        adders = ones * (self.steps + (1 << self.steps >> 1)) + 2
+        return blocks * (width * 20 * adders + 8 * states_per_step(cell))
 
     def encode(self, cell: Cell) -> Encoding:
         """Return the formula of a cell of positive elements.

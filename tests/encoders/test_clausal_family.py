@@ -9,12 +9,15 @@ from hypothesis import strategies as st
 from pysat.formula import CNF
 from pysat.solvers import Solver
 
+from cycle_encodings._orbit_draft import windows_of
+from cycle_encodings._prefix_classes import class_tree, walked
+from cycle_encodings._steps import additions
 from cycle_encodings.channels import PRIMES, Channels
 from cycle_encodings.composed import Composed
 from cycle_encodings.macro import MacroSteps
 from cycle_encodings.orbit import Orbit
 from cycle_encodings.prefixes import Prefixes
-from cycle_encodings.serial import Serial
+from cycle_encodings.serial import Serial, guarded_orbit
 from cycle_encodings.windows import ExactWindows
 from solverkit.errors import InputError
 from solverkit.methods import Budget
@@ -188,6 +191,56 @@ def test_formula_survives_dimacs(tmp_path):
     encoding.cnf().to_file(str(tmp_path / "cell.cnf"))
     again = CNF(from_file=str(tmp_path / "cell.cnf"))
     assert (again.nv, [tuple(c) for c in again.clauses]) == (encoding.variables, list(encoding.clauses))
+
+
+def measures(cell, rounds=30):
+    """(windows, k, W, S): mean width of an element, mean number of admissible odd counts."""
+    windows, k = windows_of(cell, rounds), cell.length
+    width = sum(windows.elements(i).high.bit_length() for i in range(k)) / k
+    return windows, k, width, sum(len(windows.odd_counts(i)) for i in range(k)) / k
+
+
+def within(encoding, variables, clauses, base=(0, 0)):
+    """Whether the sizes above ``base`` are those stated, up to a third."""
+    got = encoding.variables - base[0], len(encoding.clauses) - base[1]
+    return all(0.67 < one / two < 1.33 for one, two in zip(got, (variables, clauses), strict=True))
+
+
+@pytest.mark.parametrize("cell", TYPICAL, ids=str)
+def test_sizes_are_about_those_that_the_modules_state(cell):
+    q, a, ones = cell.multiplier, additions(cell), cell.multiplier.bit_count() - 1
+    _, k, width, states = measures(cell, 1)
+    assert within(Orbit().encode(cell), k * width * (3 * a + 2), k * (width * (20 * a + 8) + 8 * states))
+    _, k, width, states = measures(cell)
+    adders = k * width * (3 * a + 2), k * (width * (20 * a + 8 + states) + 8 * states)
+    assert within(ExactWindows().encode(cell), *adders)
+    serial = Serial().encode(cell)
+    assert within(serial, k * width * (q + 3), k * (width * (7 * q + 4 + states) + 8 * states))
+    base, bits = (serial.variables, len(serial.clauses)), len(serial.least_bits)
+    for p in (3, 7):
+        variables = (k + bits - 1) * p * (2 if p > 6 else 1)
+        assert within(Channels((p,)).encode(cell), variables, k * (4 * p + p * (p + 1) / 2) + 4 * bits * p, base)
+    assert within(MacroSteps().encode(cell), k * width * (5 * ones + 4), k * width * (50 * ones + 20))
+
+
+@pytest.mark.parametrize("cell", TYPICAL, ids=str)
+def test_sizes_with_classes_are_about_those_that_the_modules_state(cell):
+    windows, k, _, _ = measures(cell)
+    serial, nogoods = Serial().encode(cell), Prefixes().encode(cell)
+    bits = len(serial.least_bits)
+    tree, forbidden = class_tree(windows, 16, 2), 8 - len(walked(windows, 3))
+    most = len(tree.dead) + 2 * (bits - tree.live[0][0]) * len(tree.live) + k * forbidden
+    assert nogoods.variables == serial.variables
+    assert 0.1 * most < len(nogoods.clauses) - len(serial.clauses) <= most
+    tree = class_tree(windows, k, 3, 4096)
+    steps, live = tree.live[0][0], [residue for _, residue, _ in tree.live]
+    nodes = sum(len({residue % (1 << i) for residue in live}) for i in range(1, steps + 1))
+    most_odd = max(cell.map.parity_word(residue, steps).count("1") for residue in live)
+    high = bits - steps
+    width = (cell.multiplier**most_odd << high).bit_length() + 2
+    base = guarded_orbit(windows, first=steps).builder
+    stated = nodes + 3 * high * width, 5 * nodes + len(live) * (width + 2 * high) + 20 * high * width
+    assert within(Composed(channel=False).encode(cell), *stated, (base.variables, len(base.clauses)))
 
 
 @family
