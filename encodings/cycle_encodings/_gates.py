@@ -69,12 +69,11 @@ class Builder:
     def add(self, *literals: int) -> None:
         """Add the clause of these literals, without those that fail; nothing when one holds."""
         true = self.true
-        if true not in literals:
-            kept = tuple(literal for literal in literals if literal != -true)
-            if kept:
-                self.clauses.append(kept)
-            else:
-                self.clauses.append((-true,))
+        if true in literals:
+            return
+        if -true in literals:
+            literals = tuple(literal for literal in literals if literal != -true) or (-true,)
+        self.clauses.append(literals)
 
     def equal(self, one: int, two: int) -> None:
         """State that two literals are equivalent."""

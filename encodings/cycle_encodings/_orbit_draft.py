@@ -158,8 +158,12 @@ class OrbitDraft:
                 if inner.high < outer.high:
                     builder.at_most(bits, inner.high, [-state])
 
-    def finished(self) -> Encoding:
-        """Return the encoding, once nothing is added any more."""
+    def finished(self, cubes: Sequence[int] = ()) -> Encoding:
+        """Return the encoding, once nothing is added any more.
+
+        Args:
+            cubes: see `Encoding`.
+        """
         builder = self.builder
         return Encoding(
             self.cell,
@@ -168,4 +172,5 @@ class OrbitDraft:
             builder.finished(),
             tuple(self.elements[0]),
             builder.names,
+            tuple(cubes),
         )

@@ -68,7 +68,7 @@ def exclude_residues(draft: OrbitDraft, depth: int, allowed: Container[int]) -> 
                     draft.builder.add(*(-literal for literal in member_literals(padded, depth, residue)))
 
 
-def jump(draft: OrbitDraft, tree: PrefixTree) -> None:
+def jump(draft: OrbitDraft, tree: PrefixTree) -> tuple[int, ...]:
     """State n_0 = 2^m·u + r and n_m = q^j·u + T^m(r) for the live class r of n_0, instead of the first m steps.
 
     A literal for each node of the tree says that n_0 lies in the class; its parent and the bit decide it. The literal
@@ -78,6 +78,9 @@ def jump(draft: OrbitDraft, tree: PrefixTree) -> None:
     Args:
         draft: whose first step is the depth of the tree, after `OrbitDraft.count_odd`.
         tree: of its windows, with live classes.
+
+    Returns:
+        The literals of the leaves, of which exactly one holds.
     """
     builder, steps, map_ = draft.builder, draft.first, draft.cell.map
     leaves = _nodes(draft, tree)
@@ -99,6 +102,7 @@ def jump(draft: OrbitDraft, tree: PrefixTree) -> None:
         addend = [-builder.true] * place + [builder.both(bit, one) for one in slope]
         total = builder.add_numbers(total, addend, -builder.true, width)
     draft.identify(total, image)
+    return tuple(leaves.values())
 
 
 def _nodes(draft: OrbitDraft, tree: PrefixTree) -> dict[int, int]:

@@ -4,12 +4,20 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+from cycle_encodings._steps import copies
 from solverkit.exact.bounds import balanced_bound
 
 if TYPE_CHECKING:
     from solverkit.window import Cell
 
-__all__ = ["excluded_by_bounds", "guarded_orbit_size", "mean_width", "sixteenths", "states_per_step"]
+__all__ = [
+    "excluded_by_bounds",
+    "guarded_orbit_size",
+    "mean_width",
+    "sixteenths",
+    "states_per_step",
+    "summed_orbit_size",
+]
 
 
 def excluded_by_bounds(cell: Cell) -> bool:
@@ -43,3 +51,11 @@ def guarded_orbit_size(cell: Cell) -> int:
         return 2
     states = states_per_step(cell)
     return cell.length * (mean_width(cell) * (7 * cell.multiplier + 4 + states) + 8 * states)
+
+
+def summed_orbit_size(cell: Cell) -> int:
+    """Return a rough number of clauses of `serial.guarded_orbit` with `_steps.sum_step`."""
+    if excluded_by_bounds(cell):
+        return 2
+    states, r = states_per_step(cell), len(copies(cell.multiplier))
+    return cell.length * (mean_width(cell) * ((2 * r + 2 << r) + 4 + states) + 8 * states)

@@ -1,10 +1,11 @@
 """One step of the map on bits: out = n/2 for even n, (q·n + d)/2 for odd n.
 
-Both forms are exact: they admit the pair of bit lists if and only if the second number is the image of the first.
+All forms are exact: they admit the pair of bit lists if and only if the second number is the image of the first.
 """
 
 from __future__ import annotations
 
+from itertools import product
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
@@ -13,7 +14,7 @@ if TYPE_CHECKING:
     from cycle_encodings._gates import Builder
     from solverkit.window import Cell
 
-__all__ = ["adder_step", "additions", "serial_step"]
+__all__ = ["adder_step", "additions", "copies", "serial_step", "sum_step"]
 
 
 def additions(cell: Cell) -> int:
@@ -93,3 +94,84 @@ def serial_step(builder: Builder, cell: Cell, bits: Sequence[int], image: Sequen
             if threshold > after_low + 1:
                 builder.add(-gate, after[threshold - 1])
         low, high, least = after_low, after_high, after
+
+
+def copies(multiplier: int) -> tuple[tuple[int, int], ...]:
+    """Return (shift, sign) with q = Σ sign·2^shift, as few as possible; signs are used only when they save one.
+
+    Source: G. W. Reitwiesner, Binary arithmetic, Advances in Computers 1 (1960) 231-308, for the signed form.
+
+    >>> copies(11), copies(7)
+    (((0, 1), (1, 1), (3, 1)), ((0, -1), (3, 1)))
+    """
+    plain = tuple((place, 1) for place in range(multiplier.bit_length()) if multiplier >> place & 1)
+    signed, rest, place = [], multiplier, 0
+    while rest:
+        if rest & 1:
+            sign = 2 - (rest & 3)
+            signed.append((place, sign))
+            rest -= sign
+        rest, place = rest >> 1, place + 1
+    return plain if len(plain) <= len(signed) else tuple(signed)
+
+
+def sum_step(builder: Builder, cell: Cell, bits: Sequence[int], image: Sequence[int]) -> None:
+    """State image = T(n) by one sum of shifted copies of n a column, with a carry as small as their number.
+
+    Column z of q·n + d holds the bits n_(z−shift) of the `copies`, d_z and a carry; for r copies the carry has at most
+    r + 1 values, whatever q is. It is order-encoded, and free at even steps, as in `serial_step`. A carry threshold is
+    monotone in every bit, so its clauses name only the bits that raise it, or only those that do not.
+    """
+    q, d, true = cell.multiplier, cell.offset, builder.true
+    odd, add = bits[0], builder.add
+    columns = max(len(bits), len(image) + 1, abs(d).bit_length()) + q.bit_length() + 2
+    low = high = 0
+    least: dict[int, int] = {}
+
+    def reaches(threshold: int) -> int:
+        return true if threshold <= low else -true if threshold > high else least[threshold]
+
+    for place in range(columns):
+        out = -true
+        if place:
+            bit = bits[place] if place < len(bits) else -true
+            out = image[place - 1] if place <= len(image) else -true
+            add(odd, -bit, out)
+            add(odd, bit, -out)
+        raising, base = _column(bits, copies(q), place)
+        base += d >> place & 1
+        values = tuple(product((0, 1), repeat=len(raising)))
+        after_low, after_high = (base + low) >> 1, (base + len(raising) + high) >> 1
+        for chosen in values if place else ():
+            differs = [-literal if one else literal for literal, one in zip(raising, chosen, strict=True)]
+            for carry in range(low, high + 1):
+                parity = base + sum(chosen) + carry & 1
+                add(-odd, *differs, -reaches(carry), reaches(carry + 1), out if parity else -out)
+        after = {threshold: builder.variable() for threshold in range(after_low + 1, after_high + 1)}
+        for threshold, gate in after.items():
+            for chosen in values:
+                needed = 2 * threshold - base - sum(chosen)
+                if needed <= high:
+                    ones = (-literal for literal, one in zip(raising, chosen, strict=True) if one)
+                    add(-odd, *ones, -reaches(needed), gate)
+                if needed > low:
+                    zeros = (literal for literal, one in zip(raising, chosen, strict=True) if not one)
+                    add(-odd, *zeros, reaches(needed), -gate)
+            if threshold > after_low + 1:
+                add(-gate, after[threshold - 1])
+        low, high, least = after_low, after_high, after
+
+
+def _column(bits: Sequence[int], shifted: Sequence[tuple[int, int]], place: int) -> tuple[list[int], int]:
+    """Return the literals that raise the sum of a column by 1 each, and what it is when none holds.
+
+    The lowest bit is taken as 1: what follows concerns odd n only.
+    """
+    raising, base = [], 0
+    for shift, sign in shifted:
+        if place == shift:
+            base += sign
+        elif 0 < place - shift < len(bits):
+            raising.append(sign * bits[place - shift])
+            base -= sign < 0
+    return raising, base

@@ -1,16 +1,20 @@
-"""The default: prefix classes with their affine forms instead of the first steps, then the serial orbit.
+"""The default: prefix classes with their affine forms instead of the first steps, then a lean orbit.
 
 The least-element sieve leaves some classes r mod 2^m of n_0; each is a literal that gives n_0 = 2^m·u + r and
 n_m = q^j·u + T^m(r) with the exact bounds of u, and the first m steps of the orbit are not stated at all. From n_m on
-the orbit follows by serial multipliers, with exact windows, guards and the order. For q = 3 the elements mod 3 are a
-channel.
+the orbit follows by sums of shifted copies of n, whose carry stays small for every q, with exact windows, guards and
+the order. For q = 3 the elements mod 3 are a channel. The literals of the classes are the cubes, through which a solver
+goes one after another; then about as many conflicts are needed as least elements are left by the sieve.
 
 Condition groups: those of ``serial``, and ``residues``, which here also states the steps before m.
 
-Size, with L classes, N nodes of their tree, u the bits of U' above m, W' the width of q^j·u: about
-N + u·3·W' variables and 5·N + L·(W' + 2·u) + 20·u·W' clauses more than ``serial`` without its first m steps.
+Size, with W the mean width of an element, S the mean number of admissible odd counts at a step, r the copies of n whose
+sum is q·n (2 for q = 3, 5, 7, 9; 3 for 11 and 13): about k·W·(r + 2) variables and
+k·(W·(2^r·(2·r + 2) + 4 + S) + 8·S) clauses, without those of the first m steps; and on top, with L classes, N nodes of
+their tree, u the bits of U' above m, W' the width of q^j·u: about N + 3·u·W' variables and
+5·N + L·(W' + 2·u) + 20·u·W' clauses.
 
-Good for any cell; the default. Conflicts are about one to three for each least element that the sieve cannot exclude.
+Good for any cell; the default.
 """
 
 from __future__ import annotations
@@ -21,7 +25,8 @@ from typing import TYPE_CHECKING
 from cycle_encodings._formula import Form
 from cycle_encodings._orbit_draft import checked_option, empty_formula, windows_of
 from cycle_encodings._prefix_classes import class_tree, jump
-from cycle_encodings._sizes import excluded_by_bounds, guarded_orbit_size, mean_width
+from cycle_encodings._sizes import excluded_by_bounds, mean_width, summed_orbit_size
+from cycle_encodings._steps import sum_step
 from cycle_encodings.channels import add_channel
 from cycle_encodings.serial import guarded_orbit
 from solverkit.exact.bounds import balanced_bound
@@ -41,6 +46,7 @@ class Composed:
         leaves: at most so many classes of n_0 mod 2^m, 1 … 65,536.
         spare: bits of U' that the classes leave free at least, 1 … 64.
         channel: whether q = 3 gets a channel mod 3.
+        cubes: whether solvers are told to go through the classes one after another.
 
     Raises:
         InputError: an option outside its range.
@@ -49,6 +55,7 @@ class Composed:
     leaves: int = 4096
     spare: int = 3
     channel: bool = True
+    cubes: bool = True
     name: str = "composed"
     form: Form = Form.CNF
     summary: str = "prefix classes of the least element instead of the first steps, then serial steps; the default"
@@ -59,7 +66,7 @@ class Composed:
 
     def size(self, cell: Cell) -> int:
         """Return a rough number of clauses."""
-        size = guarded_orbit_size(cell)
+        size = summed_orbit_size(cell)
         if not excluded_by_bounds(cell):
             depth = max(0, balanced_bound(cell).bit_length() - self.spare)
             size += min(self.leaves, 1 << min(depth, 64) * 7 // 10) * (10 + mean_width(cell))
@@ -78,12 +85,11 @@ class Composed:
         if not tree.live:
             return empty_formula(cell, "residues")
         first = tree.live[0][0]
-        draft = guarded_orbit(windows, first=first)
-        if first:
-            jump(draft, tree)
+        draft = guarded_orbit(windows, first=first, step=sum_step)
+        leaves = jump(draft, tree) if first else ()
         if self.channel and cell.multiplier == 3:
             add_channel(draft, 3)
-        return draft.finished()
+        return draft.finished(leaves if self.cubes else ())
 
 
 ENCODING = Composed()

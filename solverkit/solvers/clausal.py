@@ -49,20 +49,27 @@ class ClausalSolver:
         return not self.name.startswith(_ONE_SHOT)
 
     def least_elements(self, encoding: Encoding) -> Iterator[int]:
-        """Yield the least element of each model, blocking it before the next."""
+        """Yield the least element of each model, blocking it before the next.
+
+        Cubes are assumed one after another; the end is always a search without assumptions.
+        """
         clauses = [list(clause) for clause in encoding.clauses]
         solver = Solver(name=self.name, bootstrap_with=clauses)
         try:
-            while solver.solve():
-                least = encoding.decode(solver.get_model())
-                yield least
-                blocking = list(encoding.blocking(least))
-                if self._incremental:
-                    solver.add_clause(blocking)
-                else:
-                    solver.delete()
-                    clauses.append(blocking)
-                    solver = Solver(name=self.name, bootstrap_with=clauses)
+            for cube in (*(encoding.cubes if self._incremental else ()), None):
+                while solver.solve(assumptions=[] if cube is None else [cube]):
+                    least = encoding.decode(solver.get_model())
+                    yield least
+                    blocking = list(encoding.blocking(least))
+                    if self._incremental:
+                        solver.add_clause(blocking)
+                    else:
+                        solver.delete()
+                        clauses.append(blocking)
+                        solver = Solver(name=self.name, bootstrap_with=clauses)
+                if cube is not None:
+                    # Implied by what the solver has learnt; stated, it need not be found again.
+                    solver.add_clause([-cube])
         finally:
             solver.delete()
 

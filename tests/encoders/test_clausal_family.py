@@ -11,7 +11,7 @@ from pysat.solvers import Solver
 
 from cycle_encodings._orbit_draft import windows_of
 from cycle_encodings._prefix_classes import class_tree, walked
-from cycle_encodings._steps import additions
+from cycle_encodings._steps import additions, copies, sum_step
 from cycle_encodings.channels import PRIMES, Channels
 from cycle_encodings.composed import Composed
 from cycle_encodings.macro import MacroSteps
@@ -89,6 +89,23 @@ def test_solution_sets_of_300_random_cells_equal_brute_force(encoder):
     assert total > 300
 
 
+def test_every_model_has_one_of_the_cubes():
+    with_cubes = 0
+    for cell, _ in drawn_cells(150, seed=22):
+        encoding = Composed(spare=1).encode(cell)
+        with_cubes += bool(encoding.cubes)
+        with Solver(name="cadical195", bootstrap_with=encoding.clauses) as oracle:
+            assert not encoding.cubes or not oracle.solve(assumptions=[-cube for cube in encoding.cubes])
+    assert with_cubes > 30
+
+
+@pytest.mark.parametrize("solver", ["glucose4", "minisat22", "cadical195", "kissat404"])
+def test_going_through_the_cubes_changes_no_list(solver):
+    back_end = load("solvers", solver)
+    for cell, expected in drawn_cells(60, seed=23):
+        assert sorted(back_end.least_elements(Composed(spare=1).encode(cell))) == expected, cell
+
+
 @pytest.mark.slow
 @family
 def test_solution_sets_of_3000_random_cells_equal_brute_force(encoder):
@@ -100,7 +117,7 @@ VARIANTS = st.one_of(
     st.builds(Channels, st.lists(st.sampled_from(PRIMES), unique=True, max_size=3).map(tuple)),
     st.builds(Prefixes, st.integers(0, 24), st.integers(1, 9), st.integers(0, 5)),
     st.builds(MacroSteps, st.integers(1, 6)),
-    st.builds(Composed, st.sampled_from([1, 2, 16, 500, 65536]), st.integers(1, 9), st.booleans()),
+    st.builds(Composed, st.sampled_from([1, 2, 16, 500, 65536]), st.integers(1, 9), st.booleans(), st.booleans()),
 )
 
 
@@ -238,7 +255,10 @@ def test_sizes_with_classes_are_about_those_that_the_modules_state(cell):
     most_odd = max(cell.map.parity_word(residue, steps).count("1") for residue in live)
     high = bits - steps
     width = (cell.multiplier**most_odd << high).bit_length() + 2
-    base = guarded_orbit(windows, first=steps).builder
+    base = guarded_orbit(windows, first=steps, step=sum_step).builder
+    _, k, mean, states = measures(cell)
+    r, whole = len(copies(cell.multiplier)), guarded_orbit(windows, step=sum_step).finished()
+    assert within(whole, k * mean * (r + 2), k * (mean * (2**r * (2 * r + 2) + 4 + states) + 8 * states))
     stated = nodes + 3 * high * width, 5 * nodes + len(live) * (width + 2 * high) + 20 * high * width
     assert within(Composed(channel=False).encode(cell), *stated, (base.variables, len(base.clauses)))
 
