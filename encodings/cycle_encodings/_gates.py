@@ -185,17 +185,18 @@ class Builder:
         Most significant bits first: a literal a place says that all above it are equal so far.
         """
         equal = self.true if when is None else when
-        for place in range(max(len(one), len(two)) - 1, -1, -1):
-            a = one[place] if place < len(one) else -self.true
-            b = two[place] if place < len(two) else -self.true
+        if len(two) > len(one):
+            # One literal for all places above: it must hold only where they are zero, and then what follows binds.
+            below = self.variable()
+            self.add(-equal, below, *two[len(one) :])
+            equal = below
+        for place in range(len(one) - 1, -1, -1):
+            a, b = one[place], two[place] if place < len(two) else -self.true
             self.add(-equal, -a, b)
-            if a == -self.true:
-                equal = self.both(equal, -b)
-            elif b != -self.true:
-                following = self.variable()
-                self.add(-equal, -a, following)
-                self.add(-equal, b, following)
-                equal = following
+            following = self.variable()
+            self.add(-equal, -a, following)
+            self.add(-equal, b, following)
+            equal = following
         self.add(-equal)
 
     def exactly_one(self, literals: Sequence[int]) -> None:

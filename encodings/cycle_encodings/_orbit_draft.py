@@ -103,8 +103,13 @@ class OrbitDraft:
             b = two[place] if place < len(two) else -self.builder.true
             self.builder.equal(a, b)
 
-    def count_odd(self) -> None:
-        """State which odd counts the prefixes have, one literal for each admissible state."""
+    def count_odd(self, exclusive: bool = True) -> None:
+        """State which odd counts the prefixes have, one literal for each admissible state.
+
+        Args:
+            exclusive: whether the others are stated to fail; they follow from the parities in any case, and no other
+                condition needs them.
+        """
         builder, length = self.builder, self.cell.length
         builder.group("odd count")
         for i in range(self.first, length + 1):
@@ -112,7 +117,11 @@ class OrbitDraft:
             for j in counts:
                 self.states[i, j] = builder.true if len(counts) == 1 else builder.variable(f"odd[{i}]={j}")
             if len(counts) > 1:
-                builder.exactly_one([self.states[i, j] for j in counts])
+                literals = [self.states[i, j] for j in counts]
+                if exclusive:
+                    builder.exactly_one(literals)
+                else:
+                    builder.add(*literals)
         for (i, j), state in self.states.items():
             if i < length:
                 odd = self.elements[i][0]

@@ -54,8 +54,8 @@ def guarded_orbit_size(cell: Cell) -> int:
 
 
 def summed_orbit_size(cell: Cell) -> int:
-    """Return a rough number of clauses of `serial.guarded_orbit` with `_steps.sum_step`."""
+    """Return a rough number of clauses of `composed.lean_orbit`, k·(W·(2^r·(2·r + 1.5) + 3) + 4·S)."""
     if excluded_by_bounds(cell):
         return 2
     states, r = states_per_step(cell), len(copies(cell.multiplier))
-    return cell.length * (mean_width(cell) * ((2 * r + 2 << r) + 4 + states) + 8 * states)
+    return cell.length * (mean_width(cell) * ((4 * r + 3 << r) // 2 + 3) + 4 * states)

@@ -2,15 +2,16 @@
 
 The least-element sieve leaves some classes r mod 2^m of n_0; each is a literal that gives n_0 = 2^m·u + r and
 n_m = q^j·u + T^m(r) with the exact bounds of u, and the first m steps of the orbit are not stated at all. From n_m on
-the orbit follows by sums of shifted copies of n, whose carry stays small for every q, with exact windows, guards and
-the order. For q = 3 the elements mod 3 are a channel. The literals of the classes are the cubes, through which a solver
-goes one after another; then about as many conflicts are needed as least elements are left by the sieve.
+the orbit follows by sums of shifted copies of n, whose carry stays small for every q, with the order, the range of each
+element, and the admissible odd counts. Implied literals are few, since propagation is what a run spends its time on.
+For q = 3 the elements mod 3 are a channel. The literals of the classes are the cubes, through which a solver goes one
+after another; then about as many conflicts are needed as least elements are left by the sieve.
 
 Condition groups: those of ``serial``, and ``residues``, which here also states the steps before m.
 
 Size, with W the mean width of an element, S the mean number of admissible odd counts at a step, r the copies of n whose
-sum is q·n (2 for q = 3, 5, 7, 9; 3 for 11 and 13): about k·W·(r + 2) variables and
-k·(W·(2^r·(2·r + 2) + 4 + S) + 8·S) clauses, without those of the first m steps; and on top, with L classes, N nodes of
+sum is q·n (2 for q = 3, 5, 7, 9; 3 for 11 and 13): about k·(W·(r + 1.5) + S) variables and
+k·(W·(2^r·(2·r + 1.5) + 3) + 4·S) clauses, without those of the first m steps; and on top, with L classes, N nodes of
 their tree, u the bits of U' above m, W' the width of q^j·u: about N + 3·u·W' variables and
 5·N + L·(W' + 2·u) + 20·u·W' clauses.
 
@@ -23,19 +24,19 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from cycle_encodings._formula import Form
-from cycle_encodings._orbit_draft import checked_option, empty_formula, windows_of
+from cycle_encodings._orbit_draft import OrbitDraft, checked_option, empty_formula, windows_of
 from cycle_encodings._prefix_classes import class_tree, jump
 from cycle_encodings._sizes import excluded_by_bounds, mean_width, summed_orbit_size
 from cycle_encodings._steps import sum_step
 from cycle_encodings.channels import add_channel
-from cycle_encodings.serial import guarded_orbit
 from solverkit.exact.bounds import balanced_bound
 
 if TYPE_CHECKING:
     from cycle_encodings._formula import Encoding
+    from solverkit.exact.windows import Windows
     from solverkit.window import Cell
 
-__all__ = ["ENCODING", "Composed"]
+__all__ = ["ENCODING", "Composed", "lean_orbit"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,6 +47,7 @@ class Composed:
         leaves: at most so many classes of n_0 mod 2^m, 1 … 65,536.
         spare: bits of U' that the classes leave free at least, 1 … 64.
         channel: whether q = 3 gets a channel mod 3.
+        guards: whether each state guards the exact ranges of n_0 and of its element.
         cubes: whether solvers are told to go through the classes one after another.
 
     Raises:
@@ -55,6 +57,7 @@ class Composed:
     leaves: int = 4096
     spare: int = 3
     channel: bool = True
+    guards: bool = False
     cubes: bool = True
     name: str = "composed"
     form: Form = Form.CNF
@@ -85,11 +88,29 @@ class Composed:
         if not tree.live:
             return empty_formula(cell, "residues")
         first = tree.live[0][0]
-        draft = guarded_orbit(windows, first=first, step=sum_step)
+        draft = lean_orbit(windows, first)
+        if self.guards:
+            draft.guard()
         leaves = jump(draft, tree) if first else ()
         if self.channel and cell.multiplier == 3:
             add_channel(draft, 3)
         return draft.finished(leaves if self.cubes else ())
+
+
+def lean_orbit(windows: Windows, first: int) -> OrbitDraft:
+    """Return the orbit from step ``first`` on, by sums of shifted copies, in as few implied literals as possible.
+
+    Args:
+        windows: of a cell of positive elements, not empty.
+        first: the steps before it are left out, see `OrbitDraft`.
+    """
+    draft = OrbitDraft(windows, first)
+    draft.steps(sum_step)
+    draft.close()
+    draft.count_odd(exclusive=False)
+    draft.put_least_first()
+    draft.bound()
+    return draft
 
 
 ENCODING = Composed()

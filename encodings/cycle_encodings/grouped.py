@@ -20,10 +20,10 @@ exclude every n_0. With ``order`` the same holds beside ``lower bound``, for the
 n_0 > 0 it holds anyway. Sets without ``closing`` and ``upper bound`` are met by larger numbers than 2^w in general.
 
 Size, with r = (ones of c) + (1 when e > 1 or e < 0), and S = Σ_(i=1…k) min(i, x + 1) counter literals:
-variables 1 + w + Σ_(i<k) (W_i − 1 + r·(2·W_(i+1) − 1)) + S + Σ_(0<i<k) (w + max(0, V_i − w − 1)), where V_i is W_i
+variables 1 + w + Σ_(i<k) (W_i − 1 + r·(2·W_(i+1) − 1)) + S + Σ_(0<i<k) (w + (1 when V_i > w)), where V_i is W_i
 without the sign; clauses 1 + Σ_(i<k) (3·(W_i − 1) + r·(20·W_(i+1) − 12)) for the step, w + W_k for closing,
 3·S − k + Σ_(i=1…k) min(i − 1, x + 1) + 1 + (1 when x < k) for the odd count,
-Σ_(0<i<k) (3·w + 3·max(0, V_i − w − 1) + 1 + (1 when d < 0)) for the order, the ones of B + 1 and the w-bit zeros of U'.
+Σ_(0<i<k) (3·w + (1 when V_i > w) + 1 + (1 when d < 0)) for the order, the ones of B + 1 and the w-bit zeros of U'.
 Good for cores of cells with U* up to about 10^4; nothing else.
 """
 
@@ -86,7 +86,7 @@ class Grouped:
         step = sum(3 * (width[i] - 1) + rows * (20 * width[i + 1] - 12) for i in range(k))
         states = sum(min(i, x + 1) for i in range(1, k + 1))
         count = 3 * states - k + sum(min(i - 1, x + 1) for i in range(1, k + 1)) + 1 + (x < k)
-        order = sum(3 * width[0] + 3 * max(0, width[i] - signed - width[0] - 1) + 1 + signed for i in range(1, k))
+        order = sum(3 * width[0] + (width[i] - signed > width[0]) + 1 + signed for i in range(1, k))
         bounds = (cell.above + 1).bit_count()
         top = balanced_bound(cell)
         if top < (1 << width[0]) - 1:

@@ -59,7 +59,6 @@ class Serial:
 def guarded_orbit(
     windows: Windows,
     closing: bool = True,
-    first: int = 0,
     step: Callable[[Builder, Cell, Sequence[int], Sequence[int]], None] = serial_step,
 ) -> OrbitDraft:
     """Return the orbit with exact windows and guards, ready for more conditions.
@@ -67,10 +66,9 @@ def guarded_orbit(
     Args:
         windows: of a cell of positive elements, not empty.
         closing: whether the closing is stated; without it the orbit only runs from n_0 to n_k.
-        first: the steps before ``first`` are left out, see `OrbitDraft`.
         step: a rule of `_steps`.
     """
-    draft = OrbitDraft(windows, first)
+    draft = OrbitDraft(windows)
     draft.steps(step)
     if closing:
         draft.close()

@@ -11,13 +11,13 @@ from pysat.solvers import Solver
 
 from cycle_encodings._orbit_draft import windows_of
 from cycle_encodings._prefix_classes import class_tree, walked
-from cycle_encodings._steps import additions, copies, sum_step
+from cycle_encodings._steps import additions, copies
 from cycle_encodings.channels import PRIMES, Channels
-from cycle_encodings.composed import Composed
+from cycle_encodings.composed import Composed, lean_orbit
 from cycle_encodings.macro import MacroSteps
 from cycle_encodings.orbit import Orbit
 from cycle_encodings.prefixes import Prefixes
-from cycle_encodings.serial import Serial, guarded_orbit
+from cycle_encodings.serial import Serial
 from cycle_encodings.windows import ExactWindows
 from solverkit.errors import InputError
 from solverkit.methods import Budget
@@ -117,7 +117,7 @@ VARIANTS = st.one_of(
     st.builds(Channels, st.lists(st.sampled_from(PRIMES), unique=True, max_size=3).map(tuple)),
     st.builds(Prefixes, st.integers(0, 24), st.integers(1, 9), st.integers(0, 5)),
     st.builds(MacroSteps, st.integers(1, 6)),
-    st.builds(Composed, st.sampled_from([1, 2, 16, 500, 65536]), st.integers(1, 9), st.booleans(), st.booleans()),
+    st.builds(Composed, st.sampled_from([1, 2, 16, 500, 65536]), st.integers(1, 9), *[st.booleans()] * 3),
 )
 
 
@@ -255,10 +255,11 @@ def test_sizes_with_classes_are_about_those_that_the_modules_state(cell):
     most_odd = max(cell.map.parity_word(residue, steps).count("1") for residue in live)
     high = bits - steps
     width = (cell.multiplier**most_odd << high).bit_length() + 2
-    base = guarded_orbit(windows, first=steps, step=sum_step).builder
+    base = lean_orbit(windows, steps).builder
     _, k, mean, states = measures(cell)
-    r, whole = len(copies(cell.multiplier)), guarded_orbit(windows, step=sum_step).finished()
-    assert within(whole, k * mean * (r + 2), k * (mean * (2**r * (2 * r + 2) + 4 + states) + 8 * states))
+    r, whole = len(copies(cell.multiplier)), lean_orbit(windows, 0).finished()
+    clauses = k * (mean * (2**r * (2 * r + 1.5) + 3) + 4 * states)
+    assert within(whole, k * (mean * (r + 1.5) + states), clauses)
     stated = nodes + 3 * high * width, 5 * nodes + len(live) * (width + 2 * high) + 20 * high * width
     assert within(Composed(channel=False).encode(cell), *stated, (base.variables, len(base.clauses)))
 

@@ -132,7 +132,7 @@ def test_size_formula_is_exact():
         rows = ((q - 1) // 2).bit_count() + (e > 1 or e < 0)
         variables = 1 + w + sum(width[i] - 1 + rows * (2 * width[i + 1] - 1) for i in range(k))
         variables += sum(min(i, x + 1) for i in range(1, k + 1))
-        variables += sum(w + max(0, width[i] - (d < 0) - w - 1) for i in range(1, k))
+        variables += sum(w + (width[i] - (d < 0) > w) for i in range(1, k))
         assert variables == encoding.variables, cell
 
 
