@@ -277,8 +277,8 @@ def test_an_irreducible_cell_with_a_bound_of_8188_is_explained():
 
 
 def test_time_runs_out_without_a_claim():
-    """(3, −191137, 56, 37), irreducible, U = 1.3·10^6; from a table of hard cells of this project, no source."""
-    result = explained(Cell(3, -191137, 56, 37), 1.0)
+    """(7, 53040735, 94, 22), irreducible and empty, U = 2.8·10^6; one of the cells of benchmarks/cells.jsonl."""
+    result = explained(Cell(7, 53040735, 94, 22), 1.0)
     assert (result.status, result.complete, result.cores, result.cycles) == (Verdict.OPEN, False, (), ())
     assert sentences(result)[0] == "open: neither a cycle nor a refutation was found"
     assert sentences(result)[-1] == "incomplete: 1 s were not enough"
