@@ -112,9 +112,7 @@ def main():
     """Run what the command line asks for."""
     parser = argparse.ArgumentParser(description=__doc__, formatter_class=argparse.RawDescriptionHelpFormatter)
     parser.add_argument("--limit", type=float, default=20, help="seconds for each run")
-    parser.add_argument(
-        "--default-limit", type=float, default=15, help="seconds for the default; cells beyond are left out"
-    )
+    parser.add_argument("--default-limit", type=float, default=15, help="leave out cells beyond it")
     parser.add_argument("--most", type=int, default=1000, help="at most so many cells, spread over the file")
     parser.add_argument("--without-script", action="store_true", help="leave the hand-written script out")
     arguments = parser.parse_args()
