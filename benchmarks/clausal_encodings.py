@@ -147,9 +147,7 @@ def main():
         if each:
             kind = "d > 4·U'" if few else "other cells"
             print(f"{rival}, {kind}: geometric mean of {len(each)} ratios {mean(each):.1f}, the least {min(each):.1f}")
-    print(
-        f"{unsettled} of {len(records)} cells not settled by the default within {arguments.default_limit:g} s, and left out"
-    )
+    print(f"left out: {unsettled} of {len(records)} cells, not settled by the default in {arguments.default_limit:g} s")
 
 
 if __name__ == "__main__":
