@@ -15,7 +15,8 @@ Size, with W the mean width of an element and o the number of ones of q after th
 k·W·(5·o + 4) variables and k·W·(50·o + 20) clauses. A larger m has fewer blocks, each with more products and
 comparisons.
 
-Good for: comparison; single steps with prefix classes beat it.
+Good for: comparison. It is steady, but on six cells of the benchmark with Glucose 4 it takes 1.3 times as long as
+``serial``, and three times as long as ``composed``, which jumps once.
 """
 
 from __future__ import annotations

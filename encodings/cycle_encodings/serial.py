@@ -9,8 +9,9 @@ Condition groups: ``step``, ``closing``, ``odd count``, ``order``, ``lower bound
 Size, with W the mean width of an element and S the mean number of admissible odd counts at a step: about k·W·(q + 3)
 variables and k·(W·(7·q + 4 + S) + 8·S) clauses.
 
-Good for any cell, and the ground on which the other members build. The carry grows with q: for q ≥ 9 the adders of
-``windows`` are as short. Free carries at even steps saved 10 to 20 % of the time over carries that always follow.
+Good for any cell, and the ground on which other members build: 0.8 of the time of ``windows`` on six cells of the
+benchmark with Glucose 4. Free carries at even steps saved 10 to 20 % over carries that always follow. The carry grows
+with q; ``composed`` has a step whose carry does not.
 """
 
 from __future__ import annotations

@@ -10,7 +10,7 @@ Size, with W the mean width of an element, S the mean number of admissible odd c
 step, one for each one in (q − 1)/2 and one for the constant unless d = ±1: about k·W·(3·a + 2) variables and
 k·(W·(20·a + 8 + S) + 8·S) clauses.
 
-Good for: comparison, and q ≥ 9 with few ones in (q − 1)/2.
+Good for: comparison: 0.8 of the time of ``orbit`` on six cells of the benchmark with Glucose 4 (geometric mean).
 """
 
 from __future__ import annotations
