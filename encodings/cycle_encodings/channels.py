@@ -9,8 +9,8 @@ Condition groups: those of ``serial``, and ``residues``, which follows from them
 Size, with w the width of n_0: about (k + w − 1)·P variables, twice that for P > 6, and k·(4·P + P·(P + 1)/2) + 4·w·P
 clauses for each prime on top of ``serial``.
 
-Good for P = 3: on six cells of the benchmark with Glucose 4 the geometric mean of the time is 0.7 of that of ``serial``,
-but (3, 1175, 59, 37), which has a cycle, took four times as long. Larger primes cost what they save.
+Good for P = 3: on six cells of the benchmark with Glucose 4 the geometric mean of the time is 0.7 of that of
+``serial``, but (3, 1175, 59, 37), which has a cycle, took four times as long. Larger primes cost what they save.
 """
 
 from __future__ import annotations
