@@ -71,6 +71,8 @@ def _offered(room: str, module: str, attribute: str, fallback: str) -> list[Part
         values = content() if callable(content) and not hasattr(content, "name") else content
         each = values if isinstance(values, (tuple, list)) else (values,)
         return [Part(room, value.name, module, value) for value in each]
+    except MemoryError:
+        raise
     except Exception as problem:  # noqa: BLE001 - whatever an outside module raises, the others must stay usable
         return [Part(room, fallback, module, None, f"{type(problem).__name__}: {problem}")]
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from cycle_encodings._orbit_draft import member_literals
+from cycle_encodings._sizes import most_classes
 from solverkit.residues.graph import pruned, transition_graph
 from solverkit.residues.sieve import PrefixTree, prefix_tree
 
@@ -19,8 +20,12 @@ __all__ = ["class_tree", "exclude_classes", "exclude_residues", "jump", "walked"
 
 
 def class_tree(windows: Windows, depth: int, spare: int, leaves: int = 1 << 16) -> PrefixTree:
-    """Return the sieve of a cell, capped ``spare`` bits below the width of U'; deeper is enumeration in disguise."""
-    return prefix_tree(windows, max(0, min(depth, windows.elements(0).high.bit_length() - spare)), leaves)
+    """Return the sieve of a cell, capped ``spare`` bits below the width of U'; deeper is enumeration in disguise.
+
+    The bounds of a class take as many literals as the square of the bits above it, so wide cells get fewer classes.
+    """
+    bits = windows.elements(0).high.bit_length()
+    return prefix_tree(windows, max(0, min(depth, bits - spare)), min(leaves, most_classes(bits)))
 
 
 def exclude_classes(draft: OrbitDraft, tree: PrefixTree) -> None:

@@ -14,7 +14,10 @@ if TYPE_CHECKING:
     from cycle_encodings._gates import Builder
     from solverkit.window import Cell
 
-__all__ = ["adder_step", "additions", "copies", "serial_step", "sum_step"]
+__all__ = ["MOST_COPIES", "adder_step", "additions", "copies", "lean_step", "serial_step", "sum_step"]
+
+#: Beyond so many copies of n, `adder_step` is shorter than `sum_step`, whose columns have 2^copies combinations.
+MOST_COPIES = 3
 
 
 def additions(cell: Cell) -> int:
@@ -160,6 +163,12 @@ def sum_step(builder: Builder, cell: Cell, bits: Sequence[int], image: Sequence[
             if threshold > after_low + 1:
                 add(-gate, after[threshold - 1])
         low, high, least = after_low, after_high, after
+
+
+def lean_step(builder: Builder, cell: Cell, bits: Sequence[int], image: Sequence[int]) -> None:
+    """State image = T(n) by `sum_step`, or by `adder_step` for q with many copies."""
+    step = sum_step if len(copies(cell.multiplier)) <= MOST_COPIES else adder_step
+    step(builder, cell, bits, image)
 
 
 def _column(bits: Sequence[int], shifted: Sequence[tuple[int, int]], place: int) -> tuple[list[int], int]:

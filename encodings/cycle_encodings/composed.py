@@ -11,9 +11,9 @@ Condition groups: those of ``serial``, and ``residues``, which here also states 
 
 Size, with W the mean width of an element, S the mean number of admissible odd counts at a step, r the copies of n whose
 sum is q·n (2 for q = 3, 5, 7, 9; 3 for 11 and 13): about k·(W·(r + 1.5) + S) variables and
-k·(W·(2^r·(2·r + 1.5) + 3) + 4·S) clauses, without those of the first m steps; and on top, with L classes, N nodes of
-their tree, u the bits of U' above m, W' the width of q^j·u: about N + 3·u·W' variables and
-5·N + L·(W' + 2·u) + 20·u·W' clauses.
+k·(W·(2^r·(2·r + 1.5) + 3) + 4·S) clauses, without those of the first m steps; for r > 3 the steps are those of
+``orbit``. On top, with L classes, N nodes of their tree, u the bits of U' above m, W' the width of q^j·u: about
+N + 3·u·W' variables and 5·N + L·(W' + 2·u) + 20·u·W' clauses.
 
 Good for any cell; the default. On six cells of the benchmark with Glucose 4 it takes 0.26 of the time of ``orbit``
 (geometric mean). Where d is far above U' most least elements stay up for many steps whatever is known of them, and the
@@ -28,8 +28,8 @@ from typing import TYPE_CHECKING
 from cycle_encodings._formula import Form
 from cycle_encodings._orbit_draft import OrbitDraft, checked_option, empty_formula, windows_of
 from cycle_encodings._prefix_classes import class_tree, jump
-from cycle_encodings._sizes import excluded_by_bounds, mean_width, summed_orbit_size
-from cycle_encodings._steps import sum_step
+from cycle_encodings._sizes import classes_above, excluded_by_bounds, lean_orbit_size, sixteenths
+from cycle_encodings._steps import lean_step
 from cycle_encodings.channels import add_channel
 from solverkit.exact.bounds import balanced_bound
 
@@ -63,7 +63,7 @@ class Composed:
     cubes: bool = True
     name: str = "composed"
     form: Form = Form.CNF
-    summary: str = "prefix classes of the least element instead of the first steps, then serial steps; the default"
+    summary: str = "prefix classes of the least element instead of the first steps, then sums of copies; the default"
 
     def __post_init__(self) -> None:
         checked_option("leaves", self.leaves, 1, 1 << 16)
@@ -71,10 +71,12 @@ class Composed:
 
     def size(self, cell: Cell) -> int:
         """Return a rough number of clauses."""
-        size = summed_orbit_size(cell)
+        size = lean_orbit_size(cell)
         if not excluded_by_bounds(cell):
-            depth = max(0, balanced_bound(cell).bit_length() - self.spare)
-            size += min(self.leaves, 1 << min(depth, 64) * 7 // 10) * (10 + mean_width(cell))
+            classes, high = classes_above(cell, cell.length, self.spare, self.leaves)
+            steps = balanced_bound(cell).bit_length() - high
+            width = high + steps * sixteenths(cell.multiplier) // 16
+            size += classes * (10 + width + 2 * high) + 20 * high * width
         return size
 
     def encode(self, cell: Cell) -> Encoding:
@@ -100,14 +102,16 @@ class Composed:
 
 
 def lean_orbit(windows: Windows, first: int) -> OrbitDraft:
-    """Return the orbit from step ``first`` on, by sums of shifted copies, in as few implied literals as possible.
+    """Return the orbit from step ``first`` on, in as few implied literals as possible.
+
+    With ``first`` > 0 it says nothing of how n_first follows from n_0; `jump` does.
 
     Args:
         windows: of a cell of positive elements, not empty.
         first: the steps before it are left out, see `OrbitDraft`.
     """
     draft = OrbitDraft(windows, first)
-    draft.steps(sum_step)
+    draft.steps(lean_step)
     draft.close()
     draft.count_odd(exclusive=False)
     draft.put_least_first()

@@ -22,9 +22,8 @@ from typing import TYPE_CHECKING
 from cycle_encodings._formula import Form
 from cycle_encodings._orbit_draft import checked_option, empty_formula, windows_of
 from cycle_encodings._prefix_classes import class_tree, exclude_classes, exclude_residues, walked
-from cycle_encodings._sizes import excluded_by_bounds, guarded_orbit_size
+from cycle_encodings._sizes import classes_above, excluded_by_bounds, guarded_orbit_size
 from cycle_encodings.serial import guarded_orbit
-from solverkit.exact.bounds import balanced_bound
 
 if TYPE_CHECKING:
     from cycle_encodings._formula import Encoding
@@ -62,8 +61,8 @@ class Prefixes:
         """Return a rough number of clauses."""
         size = guarded_orbit_size(cell)
         if not excluded_by_bounds(cell):
-            # About 2^(0.7·m) classes survive m steps.
-            size += 1 << max(0, min(self.depth, balanced_bound(cell).bit_length() - self.spare)) * 7 // 10
+            classes, high = classes_above(cell, self.depth, self.spare, 1 << 16)
+            size += classes * (1 + 2 * high)
         return size
 
     def encode(self, cell: Cell) -> Encoding:

@@ -29,6 +29,9 @@ def main(arguments: Sequence[str] | None = None) -> None:
     except SolverkitError as problem:
         _complain(str(problem))
         sys.exit(problem.exit_status)
+    except MemoryError:
+        _complain("memory: all of it was used; allowed: a smaller cell or window")
+        sys.exit(3)
     except BrokenPipeError:
         sys.stderr.close()
         sys.exit(1)
