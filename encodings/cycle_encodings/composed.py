@@ -76,6 +76,7 @@ class Composed:
             classes, high = classes_above(cell, cell.length, self.spare, self.leaves)
             steps = balanced_bound(cell).bit_length() - high
             width = high + steps * sixteenths(cell.multiplier) // 16
+            size = size * (cell.length - steps) // cell.length
             size += classes * (10 + width + 2 * high) + 20 * high * width
         return size
 

@@ -68,7 +68,7 @@ class ClausalSolver:
                         clauses.append(blocking)
                         solver = Solver(name=self.name, bootstrap_with=clauses)
                 if cube is not None:
-                    # Implied by what the solver has learnt; stated, it need not be found again.
+                    # Implied by the clauses, blocking ones included; stated, it need not be found again.
                     solver.add_clause([-cube])
         finally:
             solver.delete()

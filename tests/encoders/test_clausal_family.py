@@ -270,6 +270,19 @@ def test_rough_size_is_within_a_factor_of_three(encoder):
         assert 1 / 3 < encoder.size(cell) / len(encoder.encode(cell).clauses) < 3, cell
 
 
+@pytest.mark.parametrize("encoder", [Composed(), Prefixes()], ids=lambda encoder: encoder.name)
+def test_rough_size_of_a_cell_far_wider_than_long_is_within_a_factor_of_three(encoder):
+    cell = Cell(3, 10**60 + 1, 20, 10)
+    assert 1 / 3 < encoder.size(cell) / len(encoder.encode(cell).clauses) < 3
+
+
+def test_a_multiplier_with_many_ones_takes_adders():
+    """q = 1398101 has eleven ones; sums of eleven copies would take 2^11 combinations a column."""
+    cell = Cell(1398101, 2**44 - 1398101**2, 44, 2)
+    assert len(Composed().encode(cell).clauses) < len(Orbit().encode(cell).clauses) < 10**6
+    assert Composed().size(cell) < 10**7
+
+
 @family
 def test_rough_size_of_a_huge_cell_is_an_integer(encoder):
     """k = 20,000 with a bound of 20,000 bits; nothing of that size is built."""
