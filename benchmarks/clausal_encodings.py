@@ -99,10 +99,10 @@ def timed(rival, cell, limit):
     process = multiprocessing.Process(target=_serve, args=(theirs, rival, cell))
     process.start()
     theirs.close()
-    answer = ours.recv() if ours.poll(limit + 2) else (None, limit)  # EOFError: the run failed
+    found, seconds = ours.recv() if ours.poll(limit + 2) else (None, limit)  # EOFError: the run failed
     process.kill()
     process.join()
-    return answer
+    return (found, seconds) if seconds <= limit else (None, limit)
 
 
 def mean(ratios):

@@ -42,7 +42,9 @@ def become_solver_child() -> None:
     die_with_parent()
     signal.signal(signal.SIGINT, signal.SIG_IGN)
     # Native code writes notes to standard output, where the caller may be printing JSON.
-    os.dup2(2, 1)
+    nowhere = os.open(os.devnull, os.O_WRONLY)
+    os.dup2(nowhere, 1)
+    os.close(nowhere)
 
 
 class Ending(StrEnum):
