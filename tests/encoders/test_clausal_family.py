@@ -1,6 +1,5 @@
 """The clausal encodings of the orbit, judged by their full solution sets."""
 
-import random
 from dataclasses import replace
 
 import pytest
@@ -23,7 +22,7 @@ from solverkit.errors import InputError
 from solverkit.methods import Budget
 from solverkit.registry import load
 from solverkit.window import Cell, Sign
-from tests.reference import cycles_of_cell
+from tests.encoders.judging import drawn_cells, expected_of, solution_set
 from tests.strategies import cells
 
 FAMILY = [Orbit(), ExactWindows(), Serial(), Channels(), Prefixes(), MacroSteps(), Composed()]
@@ -40,8 +39,8 @@ TYPICAL = [
 ]
 
 
-def solution_set(encoding, solver="glucose4", left_out=(), most=2000):
-    """Least elements of all models, at most so many; one that comes twice fails at once."""
+def solutions(encoding, solver="glucose4", left_out=(), most=2000):
+    """Least elements of all models, at most so many, without the clauses of some groups."""
     clauses = [
         clause
         for name, ranges in encoding.groups.items()
@@ -49,42 +48,14 @@ def solution_set(encoding, solver="glucose4", left_out=(), most=2000):
         for start, stop in ranges
         for clause in encoding.clauses[start:stop]
     ]
-    found = []
-    with Solver(name=solver, bootstrap_with=clauses) as oracle:
-        while len(found) < most and oracle.solve():
-            least = encoding.decode(oracle.get_model())
-            assert least not in found
-            found.append(least)
-            oracle.add_clause(list(encoding.blocking(least)))
-    return sorted(found)
-
-
-def expected_of(cell):
-    return cycles_of_cell(cell.multiplier, cell.offset, cell.length, cell.odd, cell.above)
-
-
-def drawn_cells(count, seed):
-    """Random cells with q in 3 … 13, k ≤ 14, both signs, a third of them with an offset that divides D."""
-    rng = random.Random(seed)
-    while count:
-        q, k = rng.choice([3, 5, 7, 9, 11, 13]), rng.randint(1, 14)
-        x = rng.randint(1, k)
-        determinant = 2**k - q**x
-        size = rng.randrange(1, 400, 2)
-        if rng.random() < 0.35:
-            size = abs(determinant) // rng.choice([f for f in range(1, 50, 2) if determinant % f == 0])
-        cell = Cell(q, size if determinant > 0 else -size, k, x, rng.choice([0, 0, 0, 1, 5, 30]))
-        expected = expected_of(cell)
-        if len(expected) <= 150:
-            count -= 1
-            yield cell, expected
+    return solution_set(clauses, encoding, solver, most)
 
 
 @family
 def test_solution_sets_of_300_random_cells_equal_brute_force(encoder):
     total = 0
     for cell, expected in drawn_cells(300, seed=20):
-        assert solution_set(encoder.encode(cell)) == expected, cell
+        assert solutions(encoder.encode(cell)) == expected, cell
         total += len(expected)
     assert total > 300
 
@@ -110,7 +81,7 @@ def test_going_through_the_cubes_changes_no_list(solver):
 @family
 def test_solution_sets_of_3000_random_cells_equal_brute_force(encoder):
     for cell, expected in drawn_cells(3000, seed=21):
-        assert solution_set(encoder.encode(cell), "cadical195") == expected, cell
+        assert solutions(encoder.encode(cell), "cadical195") == expected, cell
 
 
 VARIANTS = st.one_of(
@@ -126,7 +97,7 @@ VARIANTS = st.one_of(
 def test_options_change_the_formula_but_not_its_solutions(cell, encoder):
     expected = expected_of(cell)
     if len(expected) < 100:
-        assert solution_set(encoder.encode(cell)) == expected
+        assert solutions(encoder.encode(cell)) == expected
 
 
 @family
@@ -168,13 +139,13 @@ def test_groups_of_a_cell_with_cycles_are_the_named_conditions(encoder):
 )
 def test_a_condition_left_out_is_missed(group, cell, encoder):
     """Each group does something of its own, once the ranges, which follow from all of them, are left out too."""
-    assert solution_set(encoder.encode(cell), left_out={group, "ranges"}, most=400) != expected_of(cell)
+    assert solutions(encoder.encode(cell), left_out={group, "ranges"}, most=400) != expected_of(cell)
 
 
 @pytest.mark.parametrize("encoder", [Channels((3, 5)), Prefixes(), Serial()], ids=lambda encoder: encoder.name)
 def test_ranges_and_residues_follow_from_the_other_conditions(encoder):
     for cell in [Cell(3, 35, 8, 4), Cell(3, 17, 7, 3), Cell(5, -129, 9, 4), Cell(3, 5, 11, 6)]:
-        assert solution_set(encoder.encode(cell), left_out={"ranges", "residues"}) == expected_of(cell)
+        assert solutions(encoder.encode(cell), left_out={"ranges", "residues"}) == expected_of(cell)
 
 
 @family
@@ -185,7 +156,7 @@ def test_larger_cells_have_the_cycles_that_the_sweep_finds(encoder):
         (batch,) = sweep.batches([cell])
         found = [sweep.run(piece, Budget()) for piece in sweep.pieces(batch, 60)]
         expected = sorted({hit.least for each in found for hit in each.hits if hit.length == cell.length})
-        assert solution_set(encoder.encode(cell), "cadical195") == expected
+        assert solutions(encoder.encode(cell), "cadical195") == expected
 
 
 def test_graph_nogoods_forbid_something():
@@ -193,7 +164,7 @@ def test_graph_nogoods_forbid_something():
     cell = Cell(5, -(5**6 - 2**7), 7, 6)
     with_graph, without = Prefixes(graph=2).encode(cell), Prefixes(graph=0).encode(cell)
     assert len(with_graph.clauses) > len(without.clauses)
-    assert solution_set(with_graph) == solution_set(without) == expected_of(cell)
+    assert solutions(with_graph) == solutions(without) == expected_of(cell)
 
 
 def test_composed_leaves_out_the_first_steps():

@@ -17,46 +17,12 @@ from cycle_encodings.automata import Automata, live_residues, prime_powers
 from cycle_encodings.serial import guarded_orbit
 from solverkit.errors import InputError
 from solverkit.window import Cell, Sign
-from tests.reference import cycles_of_cell
+from tests.encoders.judging import drawn_cells, expected_of, solution_set
 from tests.strategies import cells
 
 BOTH = [ACCUMULATION, AUTOMATA]
 EXACT = Accumulation(exact=True)
 CERTAIN = [Cell(3, 5, 27, 17), Cell(3, -49, 30, 19), Cell(3, 13, 46, 29), Cell(3, -3191, 45, 29), Cell(5, 8241, 84, 32)]
-
-
-def solution_set(clauses, encoding, most=1000):
-    """Least elements of all models, at most so many; one that comes twice fails at once."""
-    found = []
-    with Solver(name="glucose4", bootstrap_with=clauses) as oracle:
-        while len(found) < most and oracle.solve():
-            least = encoding.decode(oracle.get_model())
-            assert least not in found
-            found.append(least)
-            oracle.add_clause(list(encoding.blocking(least)))
-    return sorted(found)
-
-
-def expected_of(cell):
-    return cycles_of_cell(cell.multiplier, cell.offset, cell.length, cell.odd, cell.above)
-
-
-def drawn_cells(count, seed):
-    """Random cells with q in 3 … 15, k ≤ 14, both signs; two fifths of the offsets share a factor with D."""
-    rng = random.Random(seed)
-    while count:
-        q, k = rng.choice([3, 5, 7, 9, 11, 13, 15]), rng.randint(1, 14)
-        x = rng.randint(1, k)
-        determinant = 2**k - q**x
-        size = rng.randrange(1, 400, 2)
-        if rng.random() < 0.4:
-            size = abs(determinant) // rng.choice([f for f in range(1, 50, 2) if determinant % f == 0])
-            size *= rng.choice([1, 1, 3, 5, 7])
-        cell = Cell(q, size if determinant > 0 else -size, k, x, rng.choice([0, 0, 0, 1, 5, 30]))
-        expected = expected_of(cell)
-        if len(expected) <= 150:
-            count -= 1
-            yield cell, expected
 
 
 @pytest.mark.parametrize(
@@ -142,7 +108,7 @@ def test_groups_are_the_named_conditions(encoder, groups):
 def test_a_condition_left_out_is_missed_when_the_closing_is_left_to_the_word_side(group, cell, suffixes):
     """The ranges and the upper bound, which follow from the other conditions, are left out too."""
     encoding = Accumulation(exact=True, suffixes=suffixes, closing=False).encode(cell)
-    assert solution_set(_without(encoding, {group, "ranges", "upper bound"}), encoding, 400) != expected_of(cell)
+    assert solution_set(_without(encoding, {group, "ranges", "upper bound"}), encoding, most=400) != expected_of(cell)
 
 
 def _without(encoding, groups):
