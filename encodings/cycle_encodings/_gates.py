@@ -81,6 +81,13 @@ class Builder:
             self.add(-one, two)
             self.add(one, -two)
 
+    def equal_numbers(self, one: Sequence[int], two: Sequence[int]) -> None:
+        """State that two numbers are equal; the shorter one has zeros above."""
+        for place in range(max(len(one), len(two))):
+            a = one[place] if place < len(one) else -self.true
+            b = two[place] if place < len(two) else -self.true
+            self.equal(a, b)
+
     def both(self, one: int, two: int) -> int:
         """Return a literal equivalent to the conjunction."""
         true = self.true

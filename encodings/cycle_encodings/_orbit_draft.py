@@ -16,12 +16,12 @@ from solverkit.errors import InputError
 from solverkit.exact.windows import element_windows
 
 if TYPE_CHECKING:
-    from collections.abc import Callable, Sequence
+    from collections.abc import Callable, Iterable, Sequence
 
     from solverkit.exact.windows import Windows
     from solverkit.window import Cell
 
-__all__ = ["OrbitDraft", "checked_option", "empty_formula", "member_literals", "windows_of"]
+__all__ = ["OrbitDraft", "checked_option", "empty_formula", "encoded", "member_literals", "windows_of"]
 
 
 def checked_option(name: str, value: int, low: int, high: int) -> None:
@@ -53,6 +53,16 @@ def empty_formula(cell: Cell, group: str = "ranges") -> Encoding:
     return Encoding(cell, builder.variables, tuple(builder.clauses), builder.finished(), (), builder.names)
 
 
+def encoded(cell: Cell, build: Callable[[Windows], Encoding], rounds: int = 30) -> Encoding:
+    """Return what ``build`` makes of the windows of a cell, or the formula that fails when they are empty.
+
+    Raises:
+        InputError: the cell asks for negative elements.
+    """
+    windows = windows_of(cell, rounds)
+    return empty_formula(cell) if windows.empty else build(windows)
+
+
 def member_literals(bits: Sequence[int], steps: int, residue: int) -> list[int]:
     """Return the literals that hold together just when the number is ≡ ``residue`` mod 2^``steps``."""
     return [bits[i] if residue >> i & 1 else -bits[i] for i in range(steps)]
@@ -63,45 +73,39 @@ class OrbitDraft:
 
     Args:
         windows: of a cell of positive elements, not empty.
-        first: the elements after 1 … ``first`` − 1 steps are left out, and with them the steps before ``first``.
+        positions: after which numbers of steps elements are kept, ascending, 0 and k among them; all by default.
 
     Attributes:
         builder: holds the clauses so far.
+        positions: the same.
         spans: range of the element after i steps, 0 ≤ i ≤ k.
         elements: its bits, least significant first; the last list stands for the first element too. Empty when left
             out.
         states: (i, j) -> literal "j odd steps among the first i", once `count_odd` has run.
     """
 
-    def __init__(self, windows: Windows, first: int = 0) -> None:
-        self.windows, self.cell, self.first = windows, windows.cell, first
-        self.builder = Builder()
+    def __init__(self, windows: Windows, positions: Iterable[int] | None = None) -> None:
+        self.windows, self.cell, self.builder = windows, windows.cell, Builder()
+        self.positions = tuple(range(self.cell.length + 1) if positions is None else positions)
         self.spans = tuple(windows.elements(i) for i in range(self.cell.length + 1))
-        self.elements: tuple[list[int], ...] = tuple(
-            []
-            if 0 < i < first
-            else [self.builder.variable(f"n[{i}].{place}") for place in range(span.high.bit_length())]
-            for i, span in enumerate(self.spans)
-        )
+        self.elements: tuple[list[int], ...] = tuple([] for _ in self.spans)
+        for i in self.positions:
+            self.elements[i].extend(
+                self.builder.variable(f"n[{i}].{place}") for place in range(self.spans[i].high.bit_length())
+            )
         self.states: dict[tuple[int, int], int] = {}
 
     def steps(self, step: Callable[[Builder, Cell, Sequence[int], Sequence[int]], None]) -> None:
-        """State that each element is the image of the one before, by a rule of `_steps`."""
+        """State, by a rule of `_steps`, each step between two elements that are kept."""
         self.builder.group("step")
-        for bits, image in pairwise(self.elements[self.first :]):
-            step(self.builder, self.cell, bits, image)
+        for i, following in pairwise(self.positions):
+            if following == i + 1:
+                step(self.builder, self.cell, self.elements[i], self.elements[following])
 
     def close(self) -> None:
         """State that the last image is the first element."""
         self.builder.group("closing")
-        self.identify(self.elements[-1], self.elements[0])
-
-    def identify(self, one: Sequence[int], two: Sequence[int]) -> None:
-        """State that two numbers are equal; the shorter one has zeros above."""
-        for place in range(max(len(one), len(two))):
-            a = one[place] if place < len(one) else -self.builder.true
-            b = two[place] if place < len(two) else -self.builder.true
-            self.builder.equal(a, b)
+        self.builder.equal_numbers(self.elements[-1], self.elements[0])
 
     def count_odd(self, exclusive: bool = True) -> None:
         """State which odd counts the prefixes have, one literal for each admissible state.
@@ -110,9 +114,9 @@ class OrbitDraft:
             exclusive: whether the others are stated to fail; they follow from the parities in any case, and no other
                 condition needs them.
         """
-        builder, length = self.builder, self.cell.length
+        builder = self.builder
         builder.group("odd count")
-        for i in range(self.first, length + 1):
+        for i in self.positions:
             counts = self.windows.odd_counts(i)
             for j in counts:
                 self.states[i, j] = builder.true if len(counts) == 1 else builder.variable(f"odd[{i}]={j}")
@@ -122,12 +126,13 @@ class OrbitDraft:
                     builder.exactly_one(literals)
                 else:
                     builder.add(*literals)
+        kept = set(self.positions)
         for (i, j), state in self.states.items():
-            if i < length:
+            if i + 1 in kept:
                 odd = self.elements[i][0]
                 builder.add(-state, odd, self._state(i + 1, j))
                 builder.add(-state, -odd, self._state(i + 1, j + 1))
-            if i > self.first:
+            if i - 1 in kept:
                 before = self.elements[i - 1]
                 builder.add(-state, before[0], self._state(i - 1, j))
                 builder.add(-state, -before[0], self._state(i - 1, j - 1))
@@ -138,8 +143,8 @@ class OrbitDraft:
     def put_least_first(self) -> None:
         """State that every element after the first is above it: each cycle is one model, a repeated word none."""
         self.builder.group("order")
-        for bits in self.elements[max(1, self.first) : -1]:
-            self.builder.less(self.elements[0], bits)
+        for i in self.positions[1:-1]:
+            self.builder.less(self.elements[0], self.elements[i])
 
     def bound(self) -> None:
         """State the bounds of the least element, and the range of the element after each step."""
@@ -149,10 +154,9 @@ class OrbitDraft:
         builder.group("upper bound")
         builder.at_most(self.elements[0], self.windows.bound)
         builder.group("ranges")
-        for bits, span in zip(self.elements, self.spans, strict=True):
-            if bits:
-                builder.at_least(bits, span.low)
-                builder.at_most(bits, span.high)
+        for i in self.positions:
+            builder.at_least(self.elements[i], self.spans[i].low)
+            builder.at_most(self.elements[i], self.spans[i].high)
 
     def guard(self) -> None:
         """State, state by state, the exact ranges of the least element and of the element there."""

@@ -65,12 +65,11 @@ def walked(windows: Windows, depth: int) -> frozenset[int]:
 def exclude_residues(draft: OrbitDraft, depth: int, allowed: Container[int]) -> None:
     """State that no element has a residue mod 2^depth outside ``allowed``, by clauses on the lowest bits."""
     draft.builder.group("residues")
-    for bits in draft.elements[:-1]:
-        if bits:
-            padded = [*bits, *[-draft.builder.true] * depth]
-            for residue in range(1 << depth):
-                if residue not in allowed:
-                    draft.builder.add(*(-literal for literal in member_literals(padded, depth, residue)))
+    for i in draft.positions[:-1]:
+        padded = [*draft.elements[i], *[-draft.builder.true] * depth]
+        for residue in range(1 << depth):
+            if residue not in allowed:
+                draft.builder.add(*(-literal for literal in member_literals(padded, depth, residue)))
 
 
 def jump(draft: OrbitDraft, tree: PrefixTree) -> tuple[int, ...]:
@@ -81,13 +80,13 @@ def jump(draft: OrbitDraft, tree: PrefixTree) -> tuple[int, ...]:
     with the bits of q^j chosen by the state (Terras, Acta Arith. 30 (1976) 241-252).
 
     Args:
-        draft: whose first step is the depth of the tree, after `OrbitDraft.count_odd`.
+        draft: whose second element comes after as many steps as the tree is deep, after `OrbitDraft.count_odd`.
         tree: of its windows, with live classes.
 
     Returns:
         The literals of the leaves, of which exactly one holds.
     """
-    builder, steps, map_ = draft.builder, draft.first, draft.cell.map
+    builder, steps, map_ = draft.builder, draft.positions[1], draft.cell.map
     leaves = _nodes(draft, tree)
     orbits = {residue: map_.orbit(residue, steps) for residue in leaves}
     odd = {residue: sum(value & 1 for value in orbit[:-1]) for residue, orbit in orbits.items()}
@@ -106,13 +105,13 @@ def jump(draft: OrbitDraft, tree: PrefixTree) -> tuple[int, ...]:
     for place, bit in enumerate(high):
         addend = [-builder.true] * place + [builder.both(bit, one) for one in slope]
         total = builder.add_numbers(total, addend, -builder.true, width)
-    draft.identify(total, image)
+    builder.equal_numbers(total, image)
     return tuple(leaves.values())
 
 
 def _nodes(draft: OrbitDraft, tree: PrefixTree) -> dict[int, int]:
     """State the nodes of the tree and the bounds of its leaves; return residue -> literal of the leaf."""
-    builder, steps, least = draft.builder, draft.first, draft.elements[0]
+    builder, steps, least = draft.builder, draft.positions[1], draft.elements[0]
     builder.group("residues")
     nodes = {0: builder.true}
     for i in range(steps):
@@ -138,13 +137,13 @@ def _chosen(draft: OrbitDraft, slopes: dict[int, int]) -> list[int]:
     """Return the bits of q^j for the state (m, j) that holds."""
     builder, chosen = draft.builder, []
     for place in range(max(slopes.values()).bit_length()):
-        ones = [draft.states[draft.first, j] for j, slope in slopes.items() if slope >> place & 1]
+        ones = [draft.states[draft.positions[1], j] for j, slope in slopes.items() if slope >> place & 1]
         if len(ones) in (0, len(slopes)):
             chosen.append(builder.true if ones else -builder.true)
             continue
         bit = builder.variable()
         for j in slopes:
-            state = draft.states[draft.first, j]
+            state = draft.states[draft.positions[1], j]
             builder.add(-state, bit if state in ones else -bit)
         chosen.append(bit)
     return chosen

@@ -47,7 +47,7 @@ from math import gcd
 from typing import TYPE_CHECKING
 
 from cycle_encodings._formula import Form
-from cycle_encodings._orbit_draft import checked_option, empty_formula, windows_of
+from cycle_encodings._orbit_draft import checked_option, encoded
 from cycle_encodings._sizes import guarded_orbit_size, sixteenths, states_per_step
 from cycle_encodings.serial import guarded_orbit
 from solverkit.errors import InputError
@@ -60,6 +60,7 @@ if TYPE_CHECKING:
     from cycle_encodings._formula import Encoding
     from cycle_encodings._gates import Builder
     from cycle_encodings._orbit_draft import OrbitDraft
+    from solverkit.exact.windows import Windows
     from solverkit.window import Cell
 
 __all__ = ["ENCODING", "Accumulation", "join_modular_word"]
@@ -115,9 +116,9 @@ class Accumulation:
         Raises:
             InputError: the cell asks for negative elements.
         """
-        windows = windows_of(cell)
-        if windows.empty:
-            return empty_formula(cell)
+        return encoded(cell, self._formula)
+
+    def _formula(self, windows: Windows) -> Encoding:
         draft = guarded_orbit(windows, closing=self.closing)
         if self.exact:
             draft.builder.group("word")
@@ -215,8 +216,8 @@ def _join_exactly(draft: OrbitDraft, beta: Sequence[int]) -> None:
     scale, share = size // common, list(least)
     if scale > 1:
         share = [builder.variable(f"t.{place}") for place in range((draft.spans[0].high // scale).bit_length())]
-        draft.identify(_multiple(builder, share, scale), least)
-    draft.identify(_multiple(builder, share, determinant // common), beta)
+        builder.equal_numbers(_multiple(builder, share, scale), least)
+    builder.equal_numbers(_multiple(builder, share, determinant // common), beta)
 
 
 def _multiple(builder: Builder, bits: Sequence[int], factor: int) -> list[int]:

@@ -30,7 +30,7 @@ from math import isqrt
 from typing import TYPE_CHECKING
 
 from cycle_encodings._formula import Form
-from cycle_encodings._orbit_draft import checked_option, empty_formula, windows_of
+from cycle_encodings._orbit_draft import checked_option, encoded
 from cycle_encodings._sizes import guarded_orbit_size
 from cycle_encodings.serial import guarded_orbit
 from solverkit.exact.bounds import balanced_bound
@@ -82,12 +82,12 @@ class Automata:
         Raises:
             InputError: the cell asks for negative elements.
         """
-        windows = windows_of(cell)
-        if windows.empty:
-            return empty_formula(cell)
+        return encoded(cell, self._formula)
+
+    def _formula(self, windows: Windows) -> Encoding:
         draft = guarded_orbit(windows)
         draft.builder.group("automata")
-        for modulus in prime_powers(cell, self.largest):
+        for modulus in prime_powers(windows.cell, self.largest):
             _follow(draft, modulus)
         return draft.finished()
 

@@ -20,7 +20,7 @@ from itertools import pairwise
 from typing import TYPE_CHECKING
 
 from cycle_encodings._formula import Form
-from cycle_encodings._orbit_draft import empty_formula, windows_of
+from cycle_encodings._orbit_draft import encoded
 from cycle_encodings._sizes import excluded_by_bounds, guarded_orbit_size
 from cycle_encodings.serial import guarded_orbit
 from solverkit.errors import InputError
@@ -28,6 +28,7 @@ from solverkit.errors import InputError
 if TYPE_CHECKING:
     from cycle_encodings._formula import Encoding
     from cycle_encodings._orbit_draft import OrbitDraft
+    from solverkit.exact.windows import Windows
     from solverkit.window import Cell
 
 __all__ = ["ENCODING", "PRIMES", "Channels", "add_channel"]
@@ -69,9 +70,9 @@ class Channels:
         Raises:
             InputError: the cell asks for negative elements.
         """
-        windows = windows_of(cell)
-        if windows.empty:
-            return empty_formula(cell)
+        return encoded(cell, self._formula)
+
+    def _formula(self, windows: Windows) -> Encoding:
         draft = guarded_orbit(windows)
         for prime in self.primes:
             add_channel(draft, prime)
@@ -79,26 +80,29 @@ class Channels:
 
 
 def add_channel(draft: OrbitDraft, prime: int) -> None:
-    """State the residues mod ``prime`` of n_0 and of the elements from the draft's first step on; implied."""
+    """State the residues mod ``prime`` of the elements that are kept; implied."""
     builder, cell = draft.builder, draft.cell
     q, d, half = cell.multiplier, cell.offset, pow(2, -1, prime)
     builder.group("residues")
-    positions = sorted({0, *range(draft.first, cell.length)})
+    positions = draft.positions[:-1]
     rows = {i: [builder.variable(f"n[{i}]={a} mod {prime}") for a in range(prime)] for i in positions}
     rows[cell.length] = rows[0]
     for i in positions:
         builder.exactly_one(rows[i])
         if q % prime == 0 and d % prime:
             builder.add(-rows[i][0])
-    for i in range(draft.first, cell.length):
+    for i in positions:
+        if i + 1 not in rows:
+            continue
         odd, row, image = draft.elements[i][0], rows[i], rows[i + 1]
         for a in range(prime):
             builder.add(-row[a], odd, image[a * half % prime])
             builder.add(-row[a], -odd, image[(q * a + d) * half % prime])
             builder.add(-image[a], odd, row[2 * a % prime])
             builder.add(-image[a], -odd, *(row[b] for b in range(prime) if (q * b + d - 2 * a) % prime == 0))
-    for i in sorted({0, draft.first} - {cell.length}):
-        _read(draft, draft.elements[i], rows[i])
+    for i in positions:
+        if i == 0 or i - 1 not in rows:
+            _read(draft, draft.elements[i], rows[i])
 
 
 def _read(draft: OrbitDraft, bits: list[int], row: list[int]) -> None:

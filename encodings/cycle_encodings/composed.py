@@ -26,7 +26,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from cycle_encodings._formula import Form
-from cycle_encodings._orbit_draft import OrbitDraft, checked_option, empty_formula, windows_of
+from cycle_encodings._orbit_draft import OrbitDraft, checked_option, empty_formula, encoded
 from cycle_encodings._prefix_classes import class_tree, jump
 from cycle_encodings._sizes import classes_above, excluded_by_bounds, lean_orbit_size, sixteenths
 from cycle_encodings._steps import lean_step
@@ -86,18 +86,18 @@ class Composed:
         Raises:
             InputError: the cell asks for negative elements.
         """
-        windows = windows_of(cell)
-        if windows.empty:
-            return empty_formula(cell)
-        tree = class_tree(windows, cell.length, self.spare, self.leaves)
+        return encoded(cell, self._formula)
+
+    def _formula(self, windows: Windows) -> Encoding:
+        tree = class_tree(windows, windows.cell.length, self.spare, self.leaves)
         if not tree.live:
-            return empty_formula(cell, "residues")
+            return empty_formula(windows.cell, "residues")
         first = tree.live[0][0]
         draft = lean_orbit(windows, first)
         if self.guards:
             draft.guard()
         leaves = jump(draft, tree) if first else ()
-        if self.channel and cell.multiplier == 3:
+        if self.channel and windows.cell.multiplier == 3:
             add_channel(draft, 3)
         return draft.finished(leaves if self.cubes else ())
 
@@ -109,9 +109,9 @@ def lean_orbit(windows: Windows, first: int) -> OrbitDraft:
 
     Args:
         windows: of a cell of positive elements, not empty.
-        first: the steps before it are left out, see `OrbitDraft`.
+        first: the elements after 1 … ``first`` − 1 steps are left out, and with them the first steps.
     """
-    draft = OrbitDraft(windows, first)
+    draft = OrbitDraft(windows, sorted({0, *range(first, windows.cell.length + 1)}))
     draft.steps(lean_step)
     draft.close()
     draft.count_odd(exclusive=False)

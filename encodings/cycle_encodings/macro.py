@@ -22,18 +22,19 @@ Good for: comparison. It is steady, but on six cells of the benchmark with Gluco
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import TYPE_CHECKING
 
-from cycle_encodings._formula import Encoding, Form
-from cycle_encodings._gates import Builder
-from cycle_encodings._orbit_draft import checked_option, empty_formula, member_literals, windows_of
+from cycle_encodings._formula import Form
+from cycle_encodings._orbit_draft import OrbitDraft, checked_option, empty_formula, encoded, member_literals
 from cycle_encodings._prefix_classes import walked
 from cycle_encodings._sizes import excluded_by_bounds, mean_width, states_per_step
 from solverkit.exact.windows import in_order
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Iterable, Sequence
 
+    from cycle_encodings._formula import Encoding
     from solverkit.exact.windows import Windows
     from solverkit.window import Cell
 
@@ -74,13 +75,22 @@ class MacroSteps:
         Raises:
             InputError: the cell asks for negative elements.
         """
-        windows = windows_of(cell)
-        if windows.empty:
-            return empty_formula(cell)
-        residues = sorted(walked(windows, self.steps))
+        return encoded(cell, self._formula)
+
+    def _formula(self, windows: Windows) -> Encoding:
+        residues = walked(windows, self.steps)
         if not residues:
-            return empty_formula(cell, "step")
-        return _Blocks(windows, self.steps, residues).encoding()
+            return empty_formula(windows.cell, "step")
+        length = windows.cell.length
+        draft = OrbitDraft(windows, [*range(0, length, self.steps), length])
+        draft.close()
+        draft.count_odd()
+        for start, stop in pairwise(draft.positions):
+            _MacroStep(draft, start, stop - start, residues).state()
+        draft.put_least_first()
+        draft.bound()
+        draft.guard()
+        return draft.finished()
 
 
 @dataclass(frozen=True, slots=True)
@@ -92,70 +102,41 @@ class _Prefix:
     image: int
 
 
-class _Blocks:
-    """The formula in the making; ``bits[i]`` are those of the element after i steps, at block borders only."""
+class _MacroStep:
+    """The macro-step of ``steps`` steps from the element after ``start`` of them, in a draft that keeps both ends.
 
-    def __init__(self, windows: Windows, steps: int, residues: Sequence[int]) -> None:
-        self.windows, self.cell, self.builder = windows, windows.cell, Builder()
-        length = self.cell.length
-        self.borders = [*range(0, length, steps), length]
-        self.residues = residues
-        self.spans = {i: windows.elements(i) for i in self.borders}
-        self.bits = {
-            i: [self.builder.variable(f"n[{i}].{place}") for place in range(span.high.bit_length())]
-            for i, span in self.spans.items()
-        }
-        self.states: dict[tuple[int, int], int] = {}
+    Args:
+        draft: after `OrbitDraft.count_odd`.
+        start: where it begins.
+        steps: how many steps it has.
+        residues: which residues elements can have, modulo 2^steps or a higher power.
+    """
 
-    def encoding(self) -> Encoding:
-        """State everything and return the encoding."""
-        builder, length = self.builder, self.cell.length
-        self._count()
-        for start, stop in zip(self.borders, self.borders[1:], strict=False):
-            self._block(start, stop - start)
-        builder.group("closing")
-        self._identify(self.bits[length], self.bits[0])
-        builder.group("order")
-        for i in self.borders[1:-1]:
-            builder.less(self.bits[0], self.bits[i])
-        self._bounds()
-        return Encoding(
-            self.cell, builder.variables, tuple(builder.clauses), builder.finished(), tuple(self.bits[0]), builder.names
-        )
+    def __init__(self, draft: OrbitDraft, start: int, steps: int, residues: Iterable[int]) -> None:
+        self.draft, self.builder, self.cell = draft, draft.builder, draft.cell
+        self.start, self.steps = start, steps
+        self.bits, self.least = draft.elements[start], draft.elements[0]
+        left = sorted({residue % (1 << steps) for residue in residues})
+        self.classes = {r: self.builder.variable(f"n[{start}]={r} mod {1 << steps}") for r in left}
+        self.prefixes = {residue: self._prefixes(residue, steps) for residue in left}
 
-    def _count(self) -> None:
-        builder = self.builder
-        builder.group("odd count")
-        for i in self.borders:
-            counts = self.windows.odd_counts(i)
-            for j in counts:
-                self.states[i, j] = builder.true if len(counts) == 1 else builder.variable(f"odd[{i}]={j}")
-            if len(counts) > 1:
-                builder.exactly_one([self.states[i, j] for j in counts])
-
-    def _block(self, start: int, steps: int) -> None:
-        """State the macro-step of ``steps`` steps from the element after ``start``."""
+    def state(self) -> None:
+        """State the classes, the image, the odd counts and the order."""
         builder = self.builder
         builder.group("step")
-        bits = [*self.bits[start], *[-builder.true] * steps]
-        left = sorted({residue % (1 << steps) for residue in self.residues})
-        classes: dict[int, int] = {}
-        for residue in range(1 << steps):
-            member = member_literals(bits, steps, residue)
-            if residue not in left:
-                builder.add(*(-literal for literal in member))
-                continue
-            classes[residue] = chosen = builder.variable(f"n[{start}]={residue} mod {1 << steps}")
+        padded = [*self.bits, *[-builder.true] * self.steps]
+        for residue in range(1 << self.steps):
+            member = member_literals(padded, self.steps, residue)
+            chosen = self.classes.get(residue, -builder.true)
             builder.add(chosen, *(-literal for literal in member))
-            for literal in member:
+            for literal in member if residue in self.classes else ():
                 builder.add(-chosen, literal)
-        prefixes = {residue: self._prefixes(residue, steps) for residue in classes}
-        self._image(start, steps, classes, {r: path[-1] for r, path in prefixes.items()})
+        self._image()
         builder.group("odd count")
-        for residue, chosen in classes.items():
-            self._follow(start, chosen, prefixes[residue])
+        for residue, chosen in self.classes.items():
+            self._follow(chosen, self.prefixes[residue])
         builder.group("order")
-        self._compare(start, steps, classes, prefixes)
+        self._compare()
 
     def _prefixes(self, residue: int, steps: int) -> list[_Prefix]:
         path = [_Prefix(0, 0, residue)]
@@ -177,15 +158,17 @@ class _Blocks:
                     total = builder.add_numbers(total, shifted, -builder.true, width)
         return total
 
-    def _image(self, start: int, steps: int, classes: dict[int, int], ends: dict[int, _Prefix]) -> None:
-        builder, high, image = self.builder, self.bits[start][steps:], self.bits[start + steps]
+    def _image(self) -> None:
+        builder, high = self.builder, self.bits[self.steps :]
+        image = self.draft.elements[self.start + self.steps]
+        ends = {residue: path[-1] for residue, path in self.prefixes.items()}
         counts = sorted({end.odd for end in ends.values()})
         reach = (self.cell.multiplier ** counts[-1] << len(high)) + max(abs(end.image) for end in ends.values())
         width = max(reach, 1 << len(image)).bit_length() + 1
         product = [builder.variable() for _ in range(width)]
         constant = [builder.variable() for _ in range(width)]
         for j in counts:
-            active = [chosen for residue, chosen in classes.items() if ends[residue].odd == j]
+            active = [chosen for residue, chosen in self.classes.items() if ends[residue].odd == j]
             of_count = builder.variable()
             builder.add(-of_count, *active)
             for chosen in active:
@@ -193,81 +176,63 @@ class _Blocks:
             for bit, value in zip(product, self._times(high, j, width), strict=True):
                 builder.add(-of_count, -value, bit)
                 builder.add(-of_count, value, -bit)
-        for residue, chosen in classes.items():
+        for residue, chosen in self.classes.items():
             for place, bit in enumerate(constant):
                 builder.add(-chosen, bit if ends[residue].image >> place & 1 else -bit)
-        self._identify(builder.add_numbers(product, constant, -builder.true, width), image)
+        builder.equal_numbers(builder.add_numbers(product, constant, -builder.true, width), image)
 
-    def _follow(self, start: int, chosen: int, path: Sequence[_Prefix]) -> None:
+    def _follow(self, chosen: int, path: Sequence[_Prefix]) -> None:
         """State which states follow in this class, and that those inside the macro-step are admissible."""
-        rooms, stop = self.windows.rooms, start + len(path) - 1
-        for j in self.windows.odd_counts(start):
-            inside = all((start + t, j + prefix.odd) in rooms for t, prefix in enumerate(path))
-            after = self.states[stop, j + path[-1].odd] if inside else -self.builder.true
-            self.builder.add(-chosen, -self.states[start, j], after)
+        windows, states, start = self.draft.windows, self.draft.states, self.start
+        for j in windows.odd_counts(start):
+            inside = all((start + t, j + prefix.odd) in windows.rooms for t, prefix in enumerate(path))
+            after = states[start + self.steps, j + path[-1].odd] if inside else -self.builder.true
+            self.builder.add(-chosen, -states[start, j], after)
 
-    def _compare(self, start: int, steps: int, classes: dict[int, int], prefixes: dict[int, list[_Prefix]]) -> None:
+    def _compare(self) -> None:
         """State that the elements inside the macro-step are above n_0, as far as they could be below."""
-        builder, cell, span = self.builder, self.cell, self.spans[start]
-        for t in range(1, steps):
+        for t in range(1, self.steps):
             sharing: dict[int, list[int]] = {}
-            for residue in classes:
-                if prefixes[residue][t].image & 1:
+            for residue, path in self.prefixes.items():
+                if path[t].image & 1:
                     sharing.setdefault(residue % (1 << (t + 1)), []).append(residue)
             for residues in sharing.values():
-                prefix = prefixes[residues[0]][t]
-                slope, shift = cell.multiplier**prefix.odd, cell.offset * prefix.beta
-                if start == 0:
-                    self._bound_first(slope, shift, t, [classes[r] for r in residues])
-                    continue
-                if in_order(slope, shift, 1 << t, span.low, span.high) == span:
-                    continue
-                when = builder.variable()
-                for residue in residues:
-                    builder.add(-classes[residue], when)
-                # The image of r mod 2^t itself, not of r: the higher bits of r are among the bits from t on.
-                lowest = self._prefixes(residues[0] % (1 << t), t)[t].image
-                high = self.bits[start][t:]
-                width = max((slope << len(high)) + abs(lowest), 1 << len(self.bits[0])).bit_length() + 1
-                value = builder.add_numbers(
-                    self._times(high, prefix.odd, width), builder.constant(lowest, width), -builder.true, width
-                )
-                # Negative values have their top bit set and would count as large.
-                builder.add(-when, -value[-1])
-                builder.less(self.bits[0], value[:-1], when)
+                self._compare_after(t, residues)
 
-    def _bound_first(self, slope: int, shift: int, t: int, classes: Sequence[int]) -> None:
+    def _compare_after(self, t: int, residues: Sequence[int]) -> None:
+        """State it for the element after t steps in the classes ``residues``, which share these steps."""
+        builder, cell, span = self.builder, self.cell, self.draft.spans[self.start]
+        prefix = self.prefixes[residues[0]][t]
+        slope, shift = cell.multiplier**prefix.odd, cell.offset * prefix.beta
+        if self.start == 0:
+            self._bound_first(slope, shift, t, residues)
+            return
+        if in_order(slope, shift, 1 << t, span.low, span.high) == span:
+            return
+        when = builder.variable()
+        for residue in residues:
+            builder.add(-self.classes[residue], when)
+        # The image of r mod 2^t itself, not of r: the higher bits of r are among the bits from t on.
+        lowest = self._prefixes(residues[0] % (1 << t), t)[t].image
+        high = self.bits[t:]
+        width = max((slope << len(high)) + abs(lowest), 1 << len(self.least)).bit_length() + 1
+        value = builder.add_numbers(
+            self._times(high, prefix.odd, width), builder.constant(lowest, width), -builder.true, width
+        )
+        # Negative values have their top bit set and would count as large.
+        builder.add(-when, -value[-1])
+        builder.less(self.least, value[:-1], when)
+
+    def _bound_first(self, slope: int, shift: int, t: int, residues: Sequence[int]) -> None:
         """State, class by class, the exact interval of n_0 with T^t(n_0) > n_0."""
-        span = self.spans[0]
+        span = self.draft.spans[0]
         left = in_order(slope, shift, 1 << t, span.low, span.high, 1 << t)
-        for chosen in classes:
+        for chosen in (self.classes[residue] for residue in residues):
             if left is None:
                 self.builder.add(-chosen)
             else:
-                self.builder.at_least(self.bits[0], left.low, [-chosen])
-                self.builder.at_most(self.bits[0], left.high, [-chosen])
-
-    def _identify(self, one: Sequence[int], two: Sequence[int]) -> None:
-        for place in range(max(len(one), len(two))):
-            a = one[place] if place < len(one) else -self.builder.true
-            b = two[place] if place < len(two) else -self.builder.true
-            self.builder.equal(a, b)
-
-    def _bounds(self) -> None:
-        builder = self.builder
-        builder.group("lower bound")
-        builder.at_least(self.bits[0], self.cell.above + 1)
-        builder.group("upper bound")
-        builder.at_most(self.bits[0], self.windows.bound)
-        builder.group("ranges")
-        for i, span in self.spans.items():
-            builder.at_least(self.bits[i], span.low)
-            builder.at_most(self.bits[i], span.high)
-        for (i, j), state in self.states.items():
-            room = self.windows.rooms[i, j]
-            for bits, inner in ((self.bits[i], room.element), (self.bits[0], room.least)):
-                builder.at_least(bits, inner.low, [-state])
-                builder.at_most(bits, inner.high, [-state])
+                self.builder.at_least(self.least, left.low, [-chosen])
+                self.builder.at_most(self.least, left.high, [-chosen])
 
 
 ENCODING = MacroSteps()

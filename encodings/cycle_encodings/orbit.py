@@ -22,12 +22,13 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from cycle_encodings._formula import Form
-from cycle_encodings._orbit_draft import OrbitDraft, empty_formula, windows_of
+from cycle_encodings._orbit_draft import OrbitDraft, encoded
 from cycle_encodings._sizes import excluded_by_bounds, mean_width, states_per_step
 from cycle_encodings._steps import adder_step, additions
 
 if TYPE_CHECKING:
     from cycle_encodings._formula import Encoding
+    from solverkit.exact.windows import Windows
     from solverkit.window import Cell
 
 __all__ = ["ENCODING", "Orbit"]
@@ -53,16 +54,17 @@ class Orbit:
         Raises:
             InputError: the cell asks for negative elements.
         """
-        windows = windows_of(cell, rounds=1)
-        if windows.empty:
-            return empty_formula(cell)
-        draft = OrbitDraft(windows)
-        draft.steps(adder_step)
-        draft.close()
-        draft.count_odd()
-        draft.put_least_first()
-        draft.bound()
-        return draft.finished()
+        return encoded(cell, _plain, rounds=1)
+
+
+def _plain(windows: Windows) -> Encoding:
+    draft = OrbitDraft(windows)
+    draft.steps(adder_step)
+    draft.close()
+    draft.count_odd()
+    draft.put_least_first()
+    draft.bound()
+    return draft.finished()
 
 
 ENCODING = Orbit()

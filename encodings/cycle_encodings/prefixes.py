@@ -20,13 +20,14 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from cycle_encodings._formula import Form
-from cycle_encodings._orbit_draft import checked_option, empty_formula, windows_of
+from cycle_encodings._orbit_draft import checked_option, encoded
 from cycle_encodings._prefix_classes import class_tree, exclude_classes, exclude_residues, walked
 from cycle_encodings._sizes import classes_above, excluded_by_bounds, guarded_orbit_size
 from cycle_encodings.serial import guarded_orbit
 
 if TYPE_CHECKING:
     from cycle_encodings._formula import Encoding
+    from solverkit.exact.windows import Windows
     from solverkit.window import Cell
 
 __all__ = ["ENCODING", "Prefixes"]
@@ -71,9 +72,9 @@ class Prefixes:
         Raises:
             InputError: the cell asks for negative elements.
         """
-        windows = windows_of(cell)
-        if windows.empty:
-            return empty_formula(cell)
+        return encoded(cell, self._formula)
+
+    def _formula(self, windows: Windows) -> Encoding:
         draft = guarded_orbit(windows)
         exclude_classes(draft, class_tree(windows, self.depth, self.spare))
         if self.graph:

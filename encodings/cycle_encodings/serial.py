@@ -20,7 +20,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from cycle_encodings._formula import Form
-from cycle_encodings._orbit_draft import OrbitDraft, empty_formula, windows_of
+from cycle_encodings._orbit_draft import OrbitDraft, encoded
 from cycle_encodings._sizes import guarded_orbit_size
 from cycle_encodings._steps import serial_step
 
@@ -53,8 +53,7 @@ class Serial:
         Raises:
             InputError: the cell asks for negative elements.
         """
-        windows = windows_of(cell)
-        return empty_formula(cell) if windows.empty else guarded_orbit(windows).finished()
+        return encoded(cell, lambda windows: guarded_orbit(windows).finished())
 
 
 def guarded_orbit(

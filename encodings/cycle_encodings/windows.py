@@ -19,7 +19,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from cycle_encodings._formula import Form
-from cycle_encodings._orbit_draft import empty_formula, windows_of
+from cycle_encodings._orbit_draft import encoded
 from cycle_encodings._sizes import excluded_by_bounds, mean_width, states_per_step
 from cycle_encodings._steps import adder_step, additions
 from cycle_encodings.serial import guarded_orbit
@@ -52,8 +52,7 @@ class ExactWindows:
         Raises:
             InputError: the cell asks for negative elements.
         """
-        windows = windows_of(cell)
-        return empty_formula(cell) if windows.empty else guarded_orbit(windows, step=adder_step).finished()
+        return encoded(cell, lambda windows: guarded_orbit(windows, step=adder_step).finished())
 
 
 ENCODING = ExactWindows()
